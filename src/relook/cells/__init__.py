@@ -1,0 +1,5 @@
+"""Spreadsheet files as rows of typed cells, and text made safe for a cell.
+
+Both tables and worksheets come as workbooks, from people and from strangers; what is dangerous or
+lossy about that is dealt with here once.
+"""

@@ -1,0 +1,64 @@
+"""Sums of integers that never wrap round.
+
+numpy's 64-bit integers overflow silently, and ordinal differences of ten million labels do reach
+that far. Each helper bounds its result first and falls back to Python's own integers, which have no
+limit and cost time only where they are needed.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+IntArray = npt.NDArray[np.integer[Any]]
+FloatArray = npt.NDArray[np.float64]
+BoolArray = npt.NDArray[np.bool_]
+#: Integers of any width: a numpy integer array, or an object array of Python integers.
+ExactArray = npt.NDArray[Any]
+
+_LIMIT = 2**62
+
+
+def largest(values: ExactArray) -> int:
+    """Return the largest absolute value, 0 for an empty array."""
+    if values.size == 0:
+        return 0
+    return max(abs(int(values.max())), abs(int(values.min())))
+
+
+def widened(values: ExactArray, bound: int) -> ExactArray:
+    """Return `values` in a type in which results up to `bound` cannot wrap round.
+
+    Parameters
+    ----------
+    values : int array
+    bound : int
+        An upper limit of every absolute value that the caller will compute from `values`.
+    """
+    return values.astype(np.int64 if bound < _LIMIT else object)
+
+
+def dot(left: ExactArray, right: ExactArray) -> int:
+    """Return the sum of products of two integer arrays of shape (n,), exactly."""
+    if left.size == 0:
+        return 0
+    bound = largest(left) * largest(right) * left.size
+    return int(np.dot(widened(left, bound), widened(right, bound)))
+
+
+def group_sums(values: ExactArray, start: IntArray) -> ExactArray:
+    """Return the sum of each run of `values`.
+
+    Parameters
+    ----------
+    values : int array of shape (n,)
+    start : int array of shape (n_groups + 1,)
+        Where each run begins; the last entry is n. No run may be empty.
+    """
+    if len(start) <= 1:
+        return np.zeros(0, dtype=np.int64)
+    longest = int(np.diff(start).max())
+    wide = widened(values, largest(values) * longest)
+    return np.asarray(np.add.reduceat(wide, start[:-1]))

@@ -1,0 +1,203 @@
+"""Items with the same labels are computed once.
+
+A *profile* is the multiset of labels that an item carries, coders forgotten. Five coders and five
+values make 126 of them, however many items there are, so everything that depends on an item's
+labels alone (contribution, consensus, resampling, settling) is worked out per profile and weighted
+by its multiplicity. Profiles of two parts of the data merge by addition.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from relook.core.exact import IntArray
+from relook.core.labels import CodedLabels
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Profiles:
+    """Distinct label profiles, in an order that does not depend on the order of the items.
+
+    Profile p owns the entries `start[p]:start[p + 1]`: one entry per distinct value, ascending.
+
+    Attributes
+    ----------
+    value_index : int array of shape (n_entries,)
+    count : int array of shape (n_entries,)
+        How many labels of that value an item of the profile carries, 1 or more.
+    start : int array of shape (n_profiles + 1,)
+    multiplicity : int array of shape (n_profiles,)
+        How many items have the profile.
+    n_values : int
+    """
+
+    value_index: IntArray
+    count: IntArray
+    start: IntArray
+    multiplicity: IntArray
+    n_values: int
+
+    @property
+    def n_profiles(self) -> int:
+        """The number of profiles."""
+        return len(self.start) - 1
+
+    @property
+    def size(self) -> IntArray:
+        """The number of labels of an item of each profile (m_u), shape (n_profiles,)."""
+        if self.n_profiles == 0:
+            return np.zeros(0, dtype=np.int64)
+        return np.asarray(np.add.reduceat(self.count, self.start[:-1]))
+
+    @property
+    def n_distinct(self) -> IntArray:
+        """The number of distinct values of each profile, shape (n_profiles,)."""
+        return np.diff(self.start)
+
+    @property
+    def profile_of_entry(self) -> IntArray:
+        """The profile that each entry belongs to, shape (n_entries,)."""
+        return np.repeat(np.arange(self.n_profiles), self.n_distinct)
+
+    def pairable_marginals(self) -> IntArray:
+        """n_c: the labels of each value in items with two labels or more, shape (n_values,)."""
+        profile = self.profile_of_entry
+        weight = np.where(self.size >= 2, self.multiplicity, 0)[profile] * self.count
+        # bincount adds in floats; they are exact up to 2**53 labels.
+        summed = np.bincount(self.value_index, weights=weight, minlength=self.n_values)
+        return summed.astype(np.int64)
+
+    def value_pairs(self) -> tuple[IntArray, IntArray, IntArray]:
+        """Return every unordered pair of distinct values that meet in a profile.
+
+        Returns
+        -------
+        profile, first, second : int arrays of shape (n_pairs,)
+            `first` and `second` are entry positions with first < second, grouped by profile.
+        """
+        distinct = self.n_distinct
+        profiles, firsts, seconds = [], [], []
+        for d in np.unique(distinct[distinct >= 2]).tolist():
+            chosen = np.flatnonzero(distinct == d)
+            upper, lower = np.triu_indices(d, k=1)
+            begin = self.start[chosen][:, None]
+            profiles.append(np.repeat(chosen, upper.size))
+            firsts.append((begin + upper).ravel())
+            seconds.append((begin + lower).ravel())
+        if not profiles:
+            none = np.zeros(0, dtype=np.int64)
+            return none, none, none
+        profile = np.concatenate(profiles)
+        order = np.argsort(profile, kind="stable")
+        return profile[order], np.concatenate(firsts)[order], np.concatenate(seconds)[order]
+
+    def merged_with(self, other: Profiles) -> Profiles:
+        """Return the profiles of both parts of the data together.
+
+        Notes
+        -----
+        Both parts must use the same value codes.
+        """
+        values = np.concatenate([self.value_index, other.value_index])
+        counts = np.concatenate([self.count, other.count])
+        n_labels = np.concatenate([self.size, other.size])
+        each = np.concatenate([self.profile_of_entry, other.profile_of_entry + self.n_profiles])
+        labels = CodedLabels(
+            np.repeat(each, counts),
+            np.repeat(values, counts),
+            None,
+            n_items=n_labels.size,
+            n_values=max(self.n_values, other.n_values),
+            n_coders=0,
+        )
+        together, profile_of = collapse(labels)
+        multiplicity = np.bincount(
+            profile_of,
+            weights=np.concatenate([self.multiplicity, other.multiplicity]),
+            minlength=together.n_profiles,
+        ).astype(np.int64)
+        return Profiles(
+            together.value_index, together.count, together.start, multiplicity, together.n_values
+        )
+
+
+def collapse(labels: CodedLabels) -> tuple[Profiles, IntArray]:
+    """Find the distinct profiles of a set of labels.
+
+    Parameters
+    ----------
+    labels : CodedLabels
+
+    Returns
+    -------
+    profiles : Profiles
+        Ordered by size, then by their sorted values.
+    profile_of_item : int array of shape (n_items,)
+        -1 for an item without labels.
+    """
+    per_item = labels.labels_per_item
+    first = np.concatenate([[0], np.cumsum(per_item)])
+    profile_of_item = np.full(labels.n_items, -1, dtype=np.int64)
+    values, counts, distinct, multiplicities = [], [], [], []
+    found = 0
+    for m in np.unique(per_item[per_item > 0]).tolist():
+        items = np.flatnonzero(per_item == m)
+        table = labels.value_index[first[items][:, None] + np.arange(m)]
+        table = np.sort(table, axis=1)
+        which, example, often = _distinct_rows(table, labels.n_values)
+        profile_of_item[items] = found + which
+        found += often.size
+        multiplicities.append(often)
+        rows = table[example]
+        begins = np.ones(rows.shape, dtype=bool)
+        begins[:, 1:] = rows[:, 1:] != rows[:, :-1]
+        at = np.flatnonzero(begins)
+        values.append(rows.ravel()[at].astype(np.int64))
+        # Each row begins a run, so a run never crosses into the next row.
+        counts.append(np.diff(np.append(at, rows.size)))
+        distinct.append(begins.sum(axis=1))
+    if not values:
+        none = np.zeros(0, dtype=np.int64)
+        return Profiles(none, none, np.zeros(1, np.int64), none, labels.n_values), profile_of_item
+    start = np.concatenate([[0], np.cumsum(np.concatenate(distinct))])
+    profiles = Profiles(
+        np.concatenate(values),
+        np.concatenate(counts),
+        start,
+        np.concatenate(multiplicities),
+        labels.n_values,
+    )
+    return profiles, profile_of_item
+
+
+def _distinct_rows(table: IntArray, n_values: int) -> tuple[IntArray, IntArray, IntArray]:
+    """Number the distinct rows of a table of value codes in lexicographic order.
+
+    Columns are packed into 63-bit words as long as they fit; the number of the row so far then
+    takes the place of the columns already read. That is exact, unlike a hash, and sorts integers
+    rather than rows.
+
+    Returns
+    -------
+    which : int array of shape (n_rows,)
+        The number of each row.
+    example : int array of shape (n_distinct,)
+        A row that has that number.
+    often : int array of shape (n_distinct,)
+        How many rows have it.
+    """
+    bits = max(1, (n_values - 1).bit_length())
+    word = table[:, 0].astype(np.int64)
+    used = bits
+    for column in range(1, table.shape[1]):
+        if used + bits > 62:
+            _, word = np.unique(word, return_inverse=True)
+            used = max(1, int(word.max()).bit_length())
+        word = (word << bits) | table[:, column]
+        used += bits
+    _, example, which, often = np.unique(
+        word, return_index=True, return_inverse=True, return_counts=True
+    )
+    return which, example, often

@@ -1,0 +1,1 @@
+"""A project folder: its settings, rounds and record, and what is done with them."""

@@ -1,0 +1,1 @@
+"""Tables in and out with pandas: label, item and code-book tables in, result tables out."""

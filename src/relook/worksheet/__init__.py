@@ -1,0 +1,1 @@
+"""Worksheets: planned, written, and read back in whatever state they return."""
