@@ -81,7 +81,8 @@ class Problem:
     severity: Severity = "error"
 
     def __str__(self) -> str:
-        said = self.message if self.where is None else f"{self.where}: {self.message}"
+        """Say what, where, and on a line of its own the mend."""
+        said = self.message if self.where is None else f"{self.message}, {self.where}"
         return said if self.mend is None else f"{said}\nmend: {self.mend}"
 
 

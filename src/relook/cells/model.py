@@ -39,12 +39,15 @@ EMPTY = Cell("empty")
 class Sheet:
     """A sheet; `rows[i]` is the spreadsheet's row i + 1, `rows[i][j]` its column j + 1.
 
-    Rows may differ in length; empty rows within are kept, empty rows at the end are not.
+    Rows may differ in length; empty rows within are kept, empty rows at the end are not. `merged`
+    holds first row, first column, last row and last column, 1-based, of each merged range; its
+    value stands in its first cell.
     """
 
     title: str
     rows: tuple[tuple[Cell, ...], ...]
     hidden: bool = False
+    merged: tuple[tuple[int, int, int, int], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,6 +64,8 @@ class Book:
         Custom document properties.
     notes : tuple of str
         What had to be guessed or given up in reading, for the user.
+    modified : str
+        When the file says that it was last saved, in UTC to the second; "" where it does not say.
     """
 
     file: str
@@ -68,3 +73,4 @@ class Book:
     sheets: tuple[Sheet, ...]
     properties: Mapping[str, str] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
+    modified: str = ""

@@ -16,240 +16,55 @@ Krippendorff's Alpha-Reliability. University of Pennsylvania.
 
 from __future__ import annotations
 
-from abc import ABC, abstractmethod
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
-from fractions import Fraction
-from math import lcm
-from typing import ClassVar, Literal
+from collections.abc import Mapping
 
 import numpy as np
 
-from relook.core.exact import ExactArray, FloatArray, IntArray, dot, group_sums, largest, widened
-from relook.core.profiles import Profiles
-from relook.errors import RelookError
+from relook.core.difference_base import (
+    CoordinateDifferences,
+    DifferenceFunction,
+    Differences,
+    Needs,
+    NominalDifferences,
+    PairwiseDifferences,
+    Values,
+)
+from relook.core.exact import FloatArray, IntArray
+from relook.core.further_differences import (
+    Circular,
+    DifferenceTable,
+    Jaccard,
+    Masi,
+    Polar,
+    Table,
+    Tree,
+)
+from relook.errors import RelookError, listed, nearest
 
-#: What a function must know of a value beyond its identity.
-Needs = Literal["identity", "order", "number"]
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Values:
-    """What the value codes of a variable stand for.
-
-    Attributes
-    ----------
-    n_values : int
-        Codes run from 0 to n_values - 1; for ordinal variables in the order of the labels.
-    numerators : int array of shape (n_values,) or None
-        The number that each value stands for, times `denominator`; None where labels are words.
-    denominator : int
-    """
-
-    n_values: int
-    numerators: ExactArray | None = None
-    denominator: int = 1
-
-    @classmethod
-    def from_numbers(cls, numbers: Sequence[Fraction | int]) -> Values:
-        """Put exact numbers over their common denominator.
-
-        Parameters
-        ----------
-        numbers : sequence of Fraction or int, length n_values
-        """
-        fractions = [Fraction(number) for number in numbers]
-        denominator = lcm(*(number.denominator for number in fractions)) if fractions else 1
-        exact = [number.numerator * (denominator // number.denominator) for number in fractions]
-        whole = np.array(exact, dtype=object)
-        return cls(len(exact), widened(whole, 4 * largest(whole)), denominator)
-
-    def numbers(self) -> FloatArray:
-        """The numbers as floats, shape (n_values,).
-
-        Raises
-        ------
-        RelookError
-            The labels are words.
-        """
-        if self.numerators is None:
-            raise RelookError("these labels are words, not numbers")
-        return np.asarray(
-            [int(top) / self.denominator for top in self.numerators], dtype=np.float64
-        )
-
-
-class Differences(ABC):
-    """δ² between value codes, bound to the values in use and their counts.
-
-    Attributes
-    ----------
-    exact : bool
-        Whether the numerators are integers.
-    denominator : int
-        δ² is a numerator over this; 1 where not exact.
-    """
-
-    exact: bool = True
-    denominator: int = 1
-
-    @abstractmethod
-    def numerators(self, first: IntArray, second: IntArray) -> ExactArray | FloatArray:
-        """Return δ² × denominator of pairs of value codes, elementwise and broadcast."""
-
-    @abstractmethod
-    def pair_sum(self, marginals: IntArray) -> int | float:
-        """Return Σ_ck n_c n_k δ²_ck × denominator over all ordered pairs of values.
-
-        Parameters
-        ----------
-        marginals : int array of shape (n_values,)
-            n_c, the pairable labels of each value.
-        """
-
-    def within(self, profiles: Profiles) -> ExactArray | FloatArray:
-        """Return Σ_ck n_uc n_uk δ²_ck × denominator of each profile, shape (n_profiles,)."""
-        profile, first, second = profiles.value_pairs()
-        values, counts = profiles.value_index, profiles.count
-        delta = self.numerators(values[first], values[second])
-        if not self.exact:
-            weighted = 2.0 * counts[first] * counts[second] * delta
-            return np.bincount(profile, weights=weighted, minlength=profiles.n_profiles)
-        most = int(counts.max()) if counts.size else 0
-        delta = widened(delta, 2 * most * most * largest(delta))
-        weighted = 2 * counts[first] * counts[second] * delta
-        sums = np.zeros(profiles.n_profiles, dtype=weighted.dtype)
-        if profile.size:
-            begins = np.flatnonzero(np.diff(profile, prepend=-1))
-            runs = np.append(begins, profile.size)
-            summed = group_sums(weighted, runs)
-            sums = sums.astype(summed.dtype)
-            sums[profile[begins]] = summed
-        return sums
-
-    def matrix(self, n_values: int) -> FloatArray:
-        """Return δ² as a float array of shape (n_values, n_values)."""
-        codes = np.arange(n_values)
-        return np.asarray(
-            self.numerators(codes[:, None], codes[None, :]).astype(np.float64) / self.denominator
-        )
-
-    def between(self, first: IntArray, second: IntArray) -> FloatArray:
-        """Return δ² of pairs of value codes as floats."""
-        return np.asarray(self.numerators(first, second).astype(np.float64) / self.denominator)
-
-
-class NominalDifferences(Differences):
-    """1 between different values."""
-
-    def numerators(self, first: IntArray, second: IntArray) -> ExactArray:
-        """Return 1 where the codes differ."""
-        return np.not_equal(first, second).astype(np.int64)
-
-    def pair_sum(self, marginals: IntArray) -> int:
-        """Return n² − Σ n_c²."""
-        n = int(marginals.sum())
-        return n * n - dot(marginals, marginals)
-
-
-class CoordinateDifferences(Differences):
-    """(x_c − x_k)² for an integer coordinate x of each value.
-
-    Σ_ck n_c n_k (x_c − x_k)² = 2 (n Σ n_c x_c² − (Σ n_c x_c)²), so sums never need the pairs.
-    """
-
-    def __init__(self, coordinates: ExactArray, denominator: int) -> None:
-        self.coordinates = coordinates
-        self.denominator = denominator
-
-    def numerators(self, first: IntArray, second: IntArray) -> ExactArray:
-        """Return the squared distance of the coordinates."""
-        reach = 2 * largest(self.coordinates)
-        x = widened(self.coordinates, reach * reach)
-        step = x[first] - x[second]
-        return np.asarray(step * step)
-
-    def pair_sum(self, marginals: IntArray) -> int:
-        """Return the sum over ordered pairs from the first two moments."""
-        x = self.coordinates - (self.coordinates.min() if self.coordinates.size else 0)
-        n = int(marginals.sum())
-        first = dot(marginals, x)
-        squares = widened(x, largest(x) ** 2) ** 2
-        return 2 * (n * dot(marginals, squares) - first * first)
-
-    def within(self, profiles: Profiles) -> ExactArray:
-        """Return the sums within each profile from its first two moments."""
-        if profiles.n_profiles == 0:
-            return np.zeros(0, dtype=np.int64)
-        # Measured from the profile's lowest value, so that squares stay small.
-        x = self.coordinates[profiles.value_index]
-        lowest = np.minimum.reduceat(x, profiles.start[:-1])
-        x = x - np.repeat(lowest, profiles.n_distinct)
-        most = int(profiles.size.max())
-        bound = 2 * (most * largest(x)) ** 2
-        x, counts = widened(x, bound), widened(profiles.count, bound)
-        first = np.add.reduceat(counts * x, profiles.start[:-1])
-        second = np.add.reduceat(counts * x * x, profiles.start[:-1])
-        return np.asarray(2 * (profiles.size * second - first * first))
-
-
-class PairwiseDifferences(Differences):
-    """Any function of two value codes, in floats.
-
-    Expected disagreement then needs all pairs of distinct values; they are taken in blocks, so that
-    memory stays bounded.
-    """
-
-    exact = False
-    BLOCK = 2_000_000
-
-    def __init__(self, function: Callable[[IntArray, IntArray], FloatArray]) -> None:
-        self.function = function
-
-    def numerators(self, first: IntArray, second: IntArray) -> FloatArray:
-        """Return δ² itself."""
-        return self.function(first, second)
-
-    def pair_sum(self, marginals: IntArray) -> float:
-        """Return the sum over ordered pairs, block by block of rows."""
-        used = np.flatnonzero(marginals)
-        weights = marginals[used].astype(np.float64)
-        rows = max(1, self.BLOCK // max(1, used.size))
-        total = 0.0
-        for begin in range(0, used.size, rows):
-            block = used[begin : begin + rows]
-            delta = self.function(block[:, None], used[None, :])
-            total += float(weights[begin : begin + rows] @ delta @ weights)
-        return total
-
-
-class DifferenceFunction(ABC):
-    """A level of measurement: which δ² its labels call for.
-
-    Attributes
-    ----------
-    name : str
-        As written in relook.toml.
-    needs : {"identity", "order", "number"}
-        What must be known of a label beyond its identity.
-    moves_with_marginals : bool
-        Whether δ² changes when the counts of the values change.
-    """
-
-    name: ClassVar[str]
-    needs: ClassVar[Needs]
-    moves_with_marginals: ClassVar[bool] = False
-
-    @abstractmethod
-    def bind(self, values: Values, marginals: IntArray) -> Differences:
-        """Return δ² between the given values.
-
-        Parameters
-        ----------
-        values : Values
-        marginals : int array of shape (n_values,)
-            n_c, the pairable labels of each value.
-        """
+__all__ = [
+    "DIFFERENCE_FUNCTIONS",
+    "Circular",
+    "CoordinateDifferences",
+    "DifferenceFunction",
+    "DifferenceTable",
+    "Differences",
+    "Interval",
+    "Jaccard",
+    "Masi",
+    "Needs",
+    "Nominal",
+    "NominalDifferences",
+    "Ordinal",
+    "PairwiseDifferences",
+    "Polar",
+    "Ratio",
+    "Table",
+    "Tree",
+    "Values",
+    "difference_function",
+    "doubled_midranks",
+    "parse_difference",
+]
 
 
 class Nominal(DifferenceFunction):
@@ -302,9 +117,7 @@ class Interval(DifferenceFunction):
 
     def bind(self, values: Values, marginals: IntArray) -> Differences:
         """Return squared distances of the numbers over their common denominator."""
-        if values.numerators is None:
-            raise RelookError("interval differences need numbers")
-        return CoordinateDifferences(values.numerators, values.denominator**2)
+        return CoordinateDifferences(self._numbers(values), values.denominator**2)
 
 
 class Ratio(DifferenceFunction):
@@ -313,11 +126,18 @@ class Ratio(DifferenceFunction):
     name = "ratio"
     needs = "number"
 
+    def check(self, values: Values) -> list[tuple[int, str]]:
+        """Return the values below 0."""
+        if values.numerators is None:
+            return []
+        below = np.flatnonzero(np.asarray(values.numerators < 0, dtype=bool))
+        return [(code, "is negative, and a ratio needs 0 or more") for code in below.tolist()]
+
     def bind(self, values: Values, marginals: IntArray) -> Differences:
         """Return squared relative differences."""
+        self._numbers(values)
+        self._refuse_faults(values)
         x = values.numbers()
-        if x.size and float(x.min()) < 0:
-            raise RelookError("ratio differences need numbers of 0 or more")
 
         def relative(first: IntArray, second: IntArray) -> FloatArray:
             total = x[first] + x[second]
@@ -328,7 +148,116 @@ class Ratio(DifferenceFunction):
         return PairwiseDifferences(relative)
 
 
-#: Every level of measurement by its name in relook.toml. A new function is a class and a row here.
+#: Every level of measurement by its name in relook.toml. A new function is a class and a row here;
+#: those with options must be told them first (`difference_function`).
 DIFFERENCE_FUNCTIONS: dict[str, DifferenceFunction] = {
-    function.name: function for function in (Nominal(), Ordinal(), Interval(), Ratio())
+    function.name: function
+    for function in (
+        Nominal(),
+        Ordinal(),
+        Interval(),
+        Ratio(),
+        Circular(),
+        Polar(),
+        Jaccard(),
+        Masi(),
+        Tree(),
+        Table(),
+    )
 }
+
+
+def difference_function(
+    name: str, options: Mapping[str, object] | None = None
+) -> DifferenceFunction:
+    """Return a difference function told what it must be told.
+
+    Parameters
+    ----------
+    name : str
+        A name in `DIFFERENCE_FUNCTIONS`.
+    options : mapping, optional
+        period (circular), ends (polar), separator (jaccard, masi, tree), or table (table: a
+        `DifferenceTable`).
+
+    Raises
+    ------
+    RelookError
+        A name or an option that is not known, missing or of the wrong kind.
+
+    Examples
+    --------
+    >>> difference_function("circular", {"period": 24}).name
+    'circular'
+    """
+    if name not in DIFFERENCE_FUNCTIONS:
+        meant = nearest(name, DIFFERENCE_FUNCTIONS)
+        raise RelookError(
+            f'"{name}" is not a difference function',
+            mend=f'did you mean "{meant}"?' if meant else f"use one of {_names()}",
+        )
+    return DIFFERENCE_FUNCTIONS[name].with_options(options or {})
+
+
+def parse_difference(text: str) -> tuple[str, dict[str, object]]:
+    """Read a difference function written in one word, such as `circular:12`.
+
+    Parameters
+    ----------
+    text : str
+        `nominal`, `circular:12`, `polar:0,10`, `jaccard:;`, `masi:;`, `tree:/` or
+        `table:differences.csv`.
+
+    Returns
+    -------
+    name : str
+    options : dict
+        As relook.toml would have them; the table is its path, still to be read.
+
+    Raises
+    ------
+    RelookError
+        A name that is not known, or an option missing or not to be read.
+
+    Examples
+    --------
+    >>> parse_difference("polar:0,10")
+    ('polar', {'ends': ['0', '10']})
+    """
+    name, colon, rest = text.strip().partition(":")
+    if name not in DIFFERENCE_FUNCTIONS:
+        difference_function(name)
+    function = DIFFERENCE_FUNCTIONS[name]
+    if not function.options:
+        if colon:
+            raise RelookError(
+                f"{name} differences take no option; got {text!r}", mend=f"write {name}"
+            )
+        return name, {}
+    rest = rest if rest.isspace() else rest.strip()
+    if not rest:
+        raise RelookError(
+            f"{name} differences need {listed(function.options)}",
+            mend=f"write it after a colon, such as {_WRITTEN[name]}",
+        )
+    options: dict[str, object] = {function.options[0]: rest}
+    if name == "polar":
+        options = {"ends": [end.strip() for end in rest.split(",")]}
+    if name != "table":
+        function.with_options(options)
+    return name, options
+
+
+#: How each function with an option is written in one word.
+_WRITTEN = {
+    "circular": "circular:12",
+    "polar": "polar:0,10",
+    "jaccard": "jaccard:;",
+    "masi": "masi:;",
+    "tree": "tree:/",
+    "table": "table:differences.csv",
+}
+
+
+def _names() -> str:
+    return listed(DIFFERENCE_FUNCTIONS)

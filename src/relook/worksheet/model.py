@@ -24,6 +24,11 @@ HEADER_COMPETING = "label {number}"
 HEADER_DECISION = "decision"
 HEADER_REASON = "reason"
 HEADER_NOTE = "note"
+#: A column per label of a set variable, between the evidence and the decision. Any mark in it means
+#: that the label belongs to the item's set; the decision cell then stays empty. Which labels have
+#: such a column: `relook.worksheet.layout.tick_labels`.
+HEADER_TICK = "has {label}"
+TICK = "x"
 
 CANNOT_BE_CODED = "cannot be coded"
 WITHDRAW = "withdraw"

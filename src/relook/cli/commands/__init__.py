@@ -1,0 +1,17 @@
+"""The commands, by the panel of `relook --help` that they stand in."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+from relook.cli.commands.score import score
+from relook.cli.commands.why import why
+
+#: Panel → (name, function, example) in the order of the job.
+COMMANDS: dict[str, list[tuple[str, Callable[..., Any], str]]] = {
+    "Look": [
+        ("score", score, "relook score my_project"),
+        ("why", why, "relook why my_project r017"),
+    ],
+}

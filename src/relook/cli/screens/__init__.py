@@ -1,0 +1,1 @@
+"""What the commands show: one module per screen, laid out from results, nothing computed."""

@@ -1,0 +1,76 @@
+"""What TARGET names: a project folder, or a label table that is looked at as it is."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from pathlib import Path
+
+from relook.cli.terminal import Terminal
+from relook.core.differences import parse_difference
+from relook.errors import Place, RelookError
+from relook.project.folder import Project
+from relook.project.guessed import guessed_project
+from relook.project.settings import SETTINGS_FILE, Settings
+from relook.tables.guessing import Overrides
+
+
+def open_target(target: Path, terminal: Terminal, *, difference: str | None = None) -> Project:
+    """Open a project folder, or guess the layout of a label table and say what was guessed.
+
+    Parameters
+    ----------
+    target : Path
+    terminal : Terminal
+    difference : str, optional
+        The difference function of the one variable, as `--difference` gives it.
+
+    Raises
+    ------
+    RelookError
+        No such file or folder; a table whose layout cannot be guessed.
+    """
+    if target.is_dir():
+        project = Project.open(target)
+        return project if difference is None else with_difference(project, difference)
+    if target.name == SETTINGS_FILE and target.exists():
+        return open_target(target.parent, terminal, difference=difference)
+    if not target.exists():
+        raise RelookError(
+            "no such file or folder",
+            where=Place(str(target)),
+            mend="check the path; name a project folder or a label table",
+        )
+    guessed = guessed_project([target], _overrides(difference))
+    for line in guessed.said:
+        terminal.say(line)
+    return guessed.project
+
+
+def _overrides(difference: str | None) -> Overrides:
+    if difference is None:
+        return Overrides()
+    name, options = parse_difference(difference)
+    return Overrides(difference={"": name}, options={"": options})
+
+
+def with_difference(project: Project, difference: str) -> Project:
+    """Return the project with another difference function on its one variable.
+
+    Raises
+    ------
+    RelookError
+        Several variables, or no such function.
+    """
+    return replace(project, settings=settings_with_difference(project.settings, difference))
+
+
+def settings_with_difference(settings: Settings, difference: str) -> Settings:
+    """Return settings whose one variable has another difference function."""
+    if len(settings.variables) != 1:
+        raise RelookError(
+            f"--difference speaks of one variable, and this project has {len(settings.variables)}",
+            mend=f"write difference = … in the tables [variables.…] of {SETTINGS_FILE}",
+        )
+    name, options = parse_difference(difference)
+    variable = replace(settings.variables[0], difference=name, options=options)
+    return replace(settings, variables=(variable,))

@@ -1,0 +1,161 @@
+"""Which items deserve a second look, in which order, and how many of them."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+import pandas as pd
+
+from relook.core.agreement import Agreement
+from relook.core.doubt import Doubt, estimate_doubt
+from relook.core.exact import BoolArray, FloatArray, IntArray
+from relook.core.ranking import RankBy, RankedVariable, Ranking, rank_items
+from relook.core.selection import Selection, select_head
+from relook.project.explaining import consensus_for
+from relook.project.loading import Loaded, item_texts
+from relook.project.settings import QueueSettings
+from relook.tables.numbers import parse_number
+from relook.tables.schema import Variable
+
+#: The seed where none is given: fixed, so that the same command gives the same result.
+DEFAULT_SEED = 1
+
+
+@dataclass(frozen=True, slots=True)
+class Ordering:
+    """A ranking of items and the head of it that is to be sent.
+
+    Attributes
+    ----------
+    ranking : Ranking
+    selection : Selection
+    doubts : dict of str to Doubt
+        By variable; empty where no order or column asked for doubt.
+    """
+
+    ranking: Ranking
+    selection: Selection
+    doubts: dict[str, Doubt]
+
+
+def order_items(
+    loaded: Loaded,
+    queue: QueueSettings,
+    *,
+    seed: int,
+    with_doubt: bool = False,
+    leave_out: BoolArray | None = None,
+    n_audit_items: int = 0,
+    overlap: float = 0.0,
+) -> Ordering:
+    """Rank the disputed items and take the head that the settings ask for.
+
+    Parameters
+    ----------
+    loaded : Loaded
+    queue : QueueSettings
+    seed : int
+        Keys the last tie-break, a hash of the item's id.
+    with_doubt : bool
+        Estimate doubt even where the order does not ask for it.
+    leave_out : bool array of shape (n_items,), optional
+        Items that are settled or still out.
+    n_audit_items : int
+    overlap : float
+        Share of the rows that a second adjudicator gets too.
+
+    Raises
+    ------
+    RelookError
+        A priority that is no number or negative.
+    """
+    doubts = doubts_of(loaded) if with_doubt or queue.rank_by == "doubt" else {}
+    variables = [
+        ranked_variable(loaded.labels.variables[name].variable, agreement, doubts.get(name))
+        for name, agreement in loaded.agreements.items()
+    ]
+    priority = priorities(loaded)
+    if leave_out is not None and bool(leave_out.any()):
+        priority = np.where(leave_out, 0.0, 1.0 if priority is None else priority)
+    rank_by: RankBy = queue.rank_by
+    ranking = rank_items(variables, item_hashes(loaded, seed), rank_by=rank_by, priority=priority)
+    selection = select_head(
+        ranking,
+        top=queue.top,
+        share=queue.share,
+        hours=queue.hours,
+        seconds_per_item=queue.seconds_per_item,
+        overlap=overlap,
+        n_audit_items=n_audit_items,
+    )
+    return Ordering(ranking, selection, doubts)
+
+
+def ranked_variable(
+    variable: Variable, agreement: Agreement, doubt: Doubt | None
+) -> RankedVariable:
+    """Return a variable as it enters the ranking, with its doubt where there is one."""
+    return RankedVariable(
+        name=variable.name,
+        agreement=agreement,
+        weight=variable.weight,
+        doubt=None if doubt is None else doubt.for_ranking,
+        doubt_within_tie=None if doubt is None else doubt.doubt,
+    )
+
+
+def doubts_of(loaded: Loaded) -> dict[str, Doubt]:
+    """Estimate doubt on each variable; one without ground for it says why."""
+    return {
+        name: estimate_doubt(agreement, consensus_for(agreement))
+        for name, agreement in loaded.agreements.items()
+    }
+
+
+def item_hashes(loaded: Loaded, seed: int) -> IntArray:
+    """Return a keyed hash of each item's id, so that no tie follows the order of the file."""
+    key = hashlib.sha256(f"tie order {seed}".encode()).hexdigest()[:16]
+    items = np.asarray(loaded.labels.items, dtype=object)
+    hashed = pd.util.hash_array(items, hash_key=key, categorize=False)
+    return (hashed >> np.uint64(1)).astype(np.int64)
+
+
+def priorities(loaded: Loaded) -> FloatArray | None:
+    """Return the factor on each item's score, None where the project has no priority column."""
+    source = loaded.project.settings.items
+    if loaded.items is None or source is None or source.priority is None:
+        return None
+    texts = item_texts(loaded, source.priority)
+    # Reading the item table made sure that each text is blank or a number of 0 or more.
+    given = {text: float(parse_number(text) or 0) if text.strip() else 1.0 for text in set(texts)}
+    return np.array([given[text] for text in texts], dtype=np.float64)
+
+
+def groups_of(loaded: Loaded, column: str) -> tuple[IntArray, tuple[str, ...]]:
+    """Return the group of each item by a column of the item table, and the groups' names.
+
+    Returns
+    -------
+    group_of_item : int array of shape (n_items,)
+    names : tuple of str
+        In order of their text; "" for items that the item table does not have.
+    """
+    names, group = np.unique(item_texts(loaded, column).astype(str), return_inverse=True)
+    return group, tuple(str(name) for name in names)
+
+
+def settings_of_queue(queue: QueueSettings, overrides: Mapping[str, object]) -> QueueSettings:
+    """Return the queue settings with what the command line asked for this once.
+
+    A limit given on the command line replaces all limits of relook.toml: whoever asks for the
+    first 100 does not mean the first 40 that were written down earlier.
+    """
+    given = {key: value for key, value in overrides.items() if value is not None}
+    held = {name: getattr(queue, name) for name in QueueSettings.__dataclass_fields__}
+    if any(limit in given for limit in ("top", "share", "hours")):
+        held.update(top=None, share=None, hours=None)
+    held.update(given)
+    return QueueSettings(**held)

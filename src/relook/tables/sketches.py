@@ -1,0 +1,152 @@
+"""What can be seen of a column without being told: how full, how varied, numbers or words."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+import numpy as np
+
+from relook.core.exact import BoolArray, IntArray
+from relook.tables.headers import fold
+from relook.tables.numbers import parse_number
+from relook.tables.reading import Table, Texts
+
+#: Texts that commonly stand for "no label". Words that may well be labels ("none", "?", "unknown")
+#: are not among them.
+MISSING_MARKS = ("", "NA", "N/A", "n/a", "#N/A", "NaN", "nan", "NULL", "null", "-", "--", ".")
+
+#: Headers by which people name these columns, folded; a header counts if one of its words does.
+ITEM_WORDS = frozenset(
+    "item items id key document doc case unit text clip recording post article answer response "
+    "remark message sentence segment image file record number no nr question respondent".split()
+)
+CODER_WORDS = frozenset(
+    "coder coders rater annotator worker judge reviewer expert model labeller labeler user by who "
+    "person initials listener observer reader marker assessor".split()
+)
+LABEL_WORDS = frozenset(
+    "label labels code category rating value score topic class tag stance grade judgement judgment "
+    "verdict answer choice decision species call heard sentiment severity".split()
+)
+REMARK_WORDS = frozenset("remark remarks comment comments note notes rationale why".split())
+GROUP_WORDS = frozenset("source month year route channel site group batch topic region type".split())
+_DATE = re.compile(r"\s*(\d{4}-\d{1,2}-\d{1,2}|\d{1,2}[./]\d{1,2}[./]\d{2,4}|\d{1,2}:\d{2})")
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Sketch:
+    """One column of one table.
+
+    Attributes
+    ----------
+    at : int
+        0-based position.
+    header : str
+    codes : int array of shape (n_rows,)
+        Into `texts`.
+    texts : object array of shape (n_texts,)
+    counts : int array of shape (n_texts,)
+    """
+
+    at: int
+    header: str
+    codes: IntArray
+    texts: Texts
+    counts: IntArray
+
+    @property
+    def filled(self) -> BoolArray:
+        """Which of `texts` are labels rather than marks of missing ones."""
+        return np.array([text.strip() not in MISSING_MARKS for text in self.texts], dtype=bool)
+
+    @property
+    def n_filled(self) -> int:
+        """Cells that hold something."""
+        return int(self.counts[self.filled].sum())
+
+    @property
+    def n_distinct(self) -> int:
+        """Distinct texts that hold something."""
+        return int(self.filled.sum())
+
+    @property
+    def words(self) -> frozenset[str]:
+        """The words of the header."""
+        return frozenset(fold(self.header).replace(".", " ").split())
+
+    @property
+    def vocabulary(self) -> frozenset[str]:
+        """Distinct texts, folded."""
+        return frozenset(fold(text) for text in self.texts[self.filled])
+
+    @property
+    def unique(self) -> bool:
+        """Whether every cell is filled and no two are alike."""
+        return self.n_distinct == len(self.codes) == len(self.texts) > 0
+
+    @property
+    def prose(self) -> bool:
+        """Whether the cells are texts to read rather than labels: long, and mostly different."""
+        texts = self.texts[self.filled]
+        if texts.size == 0:
+            return False
+        length = float(np.mean([len(text) for text in texts[:2_000]]))
+        return length > 25 and self.n_distinct > 0.5 * self.n_filled
+
+    @property
+    def numeric(self) -> bool:
+        """Whether all texts are numbers."""
+        return self.n_distinct > 0 and all(
+            parse_number(text) is not None for text in self.texts[self.filled]
+        )
+
+    @property
+    def whole(self) -> bool:
+        """Whether all texts are whole numbers."""
+        numbers = [parse_number(text) for text in self.texts[self.filled]]
+        return bool(numbers) and all(n is not None and n.denominator == 1 for n in numbers)
+
+    @property
+    def label_like(self) -> bool:
+        """Whether texts recur, or are few, as labels do; identifiers and prose do not."""
+        if self.n_filled == 0 or self.prose:
+            return False
+        return self.n_distinct <= max(6, 0.5 * self.n_filled) or (self.numeric and not self.unique)
+
+    def constant_within(self, groups: IntArray) -> bool:
+        """Whether rows of one group always agree here, some group having several rows.
+
+        Parameters
+        ----------
+        groups : int array of shape (n_rows,)
+        """
+        order = np.argsort(groups, kind="stable")
+        group, code = groups[order], self.codes[order]
+        same = group[1:] == group[:-1]
+        return bool(same.any() and (code[1:] == code[:-1])[same].all())
+
+
+def sketch(table: Table) -> list[Sketch]:
+    """Return a sketch of each column that has a header."""
+    found = []
+    for at, header in enumerate(table.header):
+        if header.strip():
+            codes, texts = table.coded(at)
+            counts = np.bincount(codes, minlength=len(texts))
+            found.append(Sketch(at, header, codes, texts, counts))
+    return found
+
+
+def named_like(sketches: list[Sketch], words: frozenset[str]) -> list[Sketch]:
+    """Return the columns whose header holds one of the words; a header that is one comes first."""
+    fitting = [one for one in sketches if one.words & words]
+    return sorted(fitting, key=lambda one: len(one.words - words))
+
+
+def dated(one: Sketch) -> bool:
+    """Whether the column holds dates or times, by its header or its texts."""
+    if one.words & {"date", "time", "timestamp", "day", "duration", "seconds", "created"}:
+        return True
+    texts = one.texts[one.filled][:50]
+    return texts.size > 0 and all(_DATE.match(text) is not None for text in texts)
