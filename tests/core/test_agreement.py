@@ -5,7 +5,16 @@ from fractions import Fraction
 import numpy as np
 import pytest
 from nltk.metrics import agreement as nltk_agreement
-from nltk.metrics.distance import binary_distance, interval_distance, jaccard_distance, masi_distance
+from nltk.metrics.distance import (
+    binary_distance,
+    interval_distance,
+    jaccard_distance,
+    masi_distance,
+)
+from scipy.stats import rankdata
+from sklearn.metrics import cohen_kappa_score
+from statsmodels.stats.inter_rater import aggregate_raters, cohens_kappa, fleiss_kappa
+
 from reference import by_definition as twin
 from reference.published import (
     coder_rows,
@@ -14,10 +23,6 @@ from reference.published import (
     two_coder_table,
     what_if,
 )
-from scipy.stats import rankdata
-from sklearn.metrics import cohen_kappa_score
-from statsmodels.stats.inter_rater import aggregate_raters, cohens_kappa, fleiss_kappa
-
 from relook.core.agreement import (
     NO_VARIATION,
     NOTHING_PAIRABLE,
@@ -85,8 +90,12 @@ def test_examples_equal_their_exact_fractions(name, difference, printed):
     exact = example(name)["exact"][difference]
     found = measured(coder_rows(name), difference)
     assert found.alpha == pytest.approx(float(Fraction(exact["alpha_exact"])), rel=1e-15)
-    assert found.observed_disagreement == pytest.approx(float(Fraction(exact["Do_exact"])), rel=1e-15)
-    assert found.expected_disagreement == pytest.approx(float(Fraction(exact["De_exact"])), rel=1e-15)
+    assert found.observed_disagreement == pytest.approx(
+        float(Fraction(exact["Do_exact"])), rel=1e-15
+    )
+    assert found.expected_disagreement == pytest.approx(
+        float(Fraction(exact["De_exact"])), rel=1e-15
+    )
 
 
 @pytest.mark.parametrize(
@@ -112,7 +121,9 @@ def test_coincidences_of_the_published_table():
     """The coincidence matrix is the one of Krippendorff (2011), section C, with n = 40."""
     data = twin.coded(coder_rows("K2011-CD"))
     found = measure_agreement(data.labels, DIFFERENCE_FUNCTIONS["nominal"])
-    printed = [[float(Fraction(cell)) for cell in row] for row in example("K2011-CD")["coincidence_matrix"]]
+    printed = [
+        [float(Fraction(cell)) for cell in row] for row in example("K2011-CD")["coincidence_matrix"]
+    ]
     assert found.n_pairable_labels == 40
     np.testing.assert_allclose(coincidence_matrix(found.profiles), printed, rtol=1e-14)
 
@@ -148,7 +159,11 @@ def test_artstein_poesio_2008_weighted_table():
     half = Fraction(1, 2)
     weights = DifferenceTable(
         tuple(example_table["labels"]),
-        ((Fraction(0), Fraction(1), half), (Fraction(1), Fraction(0), half), (half, half, Fraction(0))),
+        (
+            (Fraction(0), Fraction(1), half),
+            (Fraction(1), Fraction(0), half),
+            (half, half, Fraction(0)),
+        ),
     )
     found = measure_agreement(
         data.labels,
@@ -294,7 +309,10 @@ def test_close_to_cohens_kappa_with_equal_marginals():
     for _ in range(20):
         first = rng.integers(0, 3, size=30)
         second = rng.permutation(first)
-        table = {i: [("A", int(a)), ("B", int(b))] for i, (a, b) in enumerate(zip(first, second, strict=True))}
+        table = {
+            i: [("A", int(a)), ("B", int(b))]
+            for i, (a, b) in enumerate(zip(first, second, strict=True))
+        }
         found = measured(table)
         n = found.n_pairable_labels
         wanted = cohen_kappa_score(first, second)

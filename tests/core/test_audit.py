@@ -109,7 +109,7 @@ def test_a_stratum_without_a_ruling_leaves_the_release_undefined() -> None:
 
 
 def test_estimates_cover_simulated_audits() -> None:
-    """Drawn from a known release, the 95 % interval holds the true share in 93 % or more (seed 6)."""
+    """Drawn from a known release, the 95 % interval holds the true share in 94 % or more (seed 6)."""
     rng = np.random.default_rng(6)
     stratum = np.repeat([0, 1, 2], [1500, 300, 200])
     wrong = rng.random(2000) < np.repeat([0.02, 0.3, 0.1], [1500, 300, 200])
@@ -126,7 +126,7 @@ def test_estimates_cover_simulated_audits() -> None:
         assert got.share_ruled_otherwise is not None
         covered += got.low <= truth <= got.high
         total += got.share_ruled_otherwise
-    assert covered >= 930
+    assert covered >= 940
     assert total / 1000 == pytest.approx(truth, abs=0.005)
 
 

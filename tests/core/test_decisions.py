@@ -45,14 +45,22 @@ ANY_DECISION = st.builds(
 HOW = {"tolerances": {"number": Fraction(1)}, "unanimous": {("u", "v"): "1", ("w", "number"): "2"}}
 
 
-@given(st.lists(ANY_DECISION, max_size=14).flatmap(lambda d: st.tuples(st.just(d), st.permutations(d))))
-def test_any_order_of_the_record_folds_to_the_same(pair: tuple[list[Decision], list[Decision]]) -> None:
+@given(
+    st.lists(ANY_DECISION, max_size=14).flatmap(lambda d: st.tuples(st.just(d), st.permutations(d)))
+)
+def test_any_order_of_the_record_folds_to_the_same(
+    pair: tuple[list[Decision], list[Decision]],
+) -> None:
     """A permutation of the record changes nothing, equal orders and ids included."""
     record, permuted = pair
     assert fold(record, **HOW) == fold(permuted, **HOW)
 
 
-@given(st.lists(ANY_DECISION, max_size=10), st.lists(ANY_DECISION, max_size=10), st.lists(ANY_DECISION, max_size=4))
+@given(
+    st.lists(ANY_DECISION, max_size=10),
+    st.lists(ANY_DECISION, max_size=10),
+    st.lists(ANY_DECISION, max_size=4),
+)
 def test_merging_two_records_is_their_union(
     first: list[Decision], second: list[Decision], shared: list[Decision]
 ) -> None:

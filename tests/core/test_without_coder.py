@@ -4,10 +4,10 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
+
 from reference import by_definition as twin
 from reference.cases import CASES, measured, tables
 from reference.published import coder_rows, what_if
-
 from relook.core.without_coder import alpha_without_coder
 
 

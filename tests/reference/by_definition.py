@@ -62,18 +62,22 @@ def ratio(table: Table) -> Difference:
 
 def circular(period: int | Fraction) -> Delta:
     """sin²(π (c − k)/period), in floats."""
-    return lambda table: lambda c, k: (
-        0.0 if c == k else math.sin(math.pi * float((Fraction(c) - Fraction(k)) / period)) ** 2
+    return lambda table: (
+        lambda c, k: (
+            0.0 if c == k else math.sin(math.pi * float((Fraction(c) - Fraction(k)) / period)) ** 2
+        )
     )
 
 
 def polar(low: int, high: int) -> Delta:
     """(c − k)²/((c + k − 2 low)(2 high − c − k)); 0 for equal values."""
-    return lambda table: lambda c, k: (
-        Fraction(0)
-        if c == k
-        else (Fraction(c) - Fraction(k)) ** 2
-        / ((Fraction(c) + Fraction(k) - 2 * low) * (2 * high - Fraction(c) - Fraction(k)))
+    return lambda table: (
+        lambda c, k: (
+            Fraction(0)
+            if c == k
+            else (Fraction(c) - Fraction(k)) ** 2
+            / ((Fraction(c) + Fraction(k) - 2 * low) * (2 * high - Fraction(c) - Fraction(k)))
+        )
     )
 
 

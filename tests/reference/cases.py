@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import numpy as np
-from reference import by_definition as twin
 
+from reference import by_definition as twin
 from relook.core.agreement import Agreement, measure_agreement
 from relook.core.differences import difference_function
 
@@ -32,7 +32,8 @@ def random_table(rng, n_items=8, n_coders=5, n_values=5):
 def measured(table, name="nominal") -> tuple[Agreement, twin.Coded]:
     data = twin.coded(table)
     function = difference_function(name, CASES[name][1])
-    return measure_agreement(data.labels, function, data.numbers()), data
+    numbers = data.numbers() if function.needs == "number" else None
+    return measure_agreement(data.labels, function, numbers), data
 
 
 def tables(name, how_many=60):
@@ -42,5 +43,3 @@ def tables(name, how_many=60):
         table = random_table(rng, int(rng.integers(1, 9)), int(rng.integers(2, 6)))
         if twin.pairable(table):
             yield table, *measured(table, name)
-
-

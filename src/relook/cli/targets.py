@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 
@@ -9,7 +10,7 @@ from relook.cli.terminal import Terminal
 from relook.core.differences import parse_difference
 from relook.errors import Place, RelookError
 from relook.project.folder import Project
-from relook.project.guessed import guessed_project
+from relook.project.guessed import folder_beside, guessed_project, in_folder
 from relook.project.settings import SETTINGS_FILE, Settings
 from relook.tables.guessing import Overrides
 
@@ -44,6 +45,46 @@ def open_target(target: Path, terminal: Terminal, *, difference: str | None = No
     for line in guessed.said:
         terminal.say(line)
     return guessed.project
+
+
+def project_to_write(
+    target: Path,
+    terminal: Terminal,
+    *,
+    difference: str | None = None,
+    adjudicators: Sequence[str] | None = None,
+    dry_run: bool = False,
+) -> tuple[Project, bool]:
+    """Open a project folder, or the one that belongs to a bare table.
+
+    Returns
+    -------
+    project : Project
+    is_new : bool
+        Whether its relook.toml is still to be written.
+
+    Raises
+    ------
+    RelookError
+        As for `open_target`; adjudicators given for a folder that names its own.
+    """
+    if target.is_dir() or target.name == SETTINGS_FILE:
+        if adjudicators:
+            raise RelookError(
+                "--adjudicator is for a bare table",
+                mend=f"write adjudicators = [...] under [worksheet] of {SETTINGS_FILE}",
+            )
+        return open_target(target, terminal, difference=difference), False
+    folder = folder_beside(target)
+    if target.exists() and (folder / SETTINGS_FILE).exists():
+        terminal.say(f"going on in {folder}, which belongs to this table")
+        return project_to_write(folder, terminal, difference=difference)
+    project = in_folder(open_target(target, terminal, difference=difference), folder)
+    if adjudicators:
+        worksheet = replace(project.settings.worksheet, adjudicators=dict.fromkeys(adjudicators))
+        project = replace(project, settings=replace(project.settings, worksheet=worksheet))
+    terminal.say(f"{'would make' if dry_run else 'making'} {folder} beside the table")
+    return project, True
 
 
 def _overrides(difference: str | None) -> Overrides:

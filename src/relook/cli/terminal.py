@@ -73,9 +73,7 @@ class Terminal:
             self.err.print(Text(f"… and {len(found) - most:,} more"))
 
     def _fault(self, severity: str, problem: Problem) -> None:
-        self.err.print(
-            Text.assemble((f"{severity}: ", "bold"), str(problem)), soft_wrap=True
-        )
+        self.err.print(Text.assemble((f"{severity}: ", "bold"), str(problem)), soft_wrap=True)
 
     @contextlib.contextmanager
     def progress(self, what: str, total: int) -> Iterator[Progress | None]:
@@ -89,7 +87,7 @@ class Terminal:
             yield progress
 
     @staticmethod
-    def now() -> str:
+    def now() -> datetime:
         """Return the time to record: SOURCE_DATE_EPOCH where that is set, else the clock.
 
         Raises
@@ -99,9 +97,9 @@ class Terminal:
         """
         epoch = os.environ.get("SOURCE_DATE_EPOCH")
         if epoch is None:
-            return datetime.now(UTC).isoformat(timespec="seconds")
+            return datetime.now(UTC)
         try:
-            return datetime.fromtimestamp(int(epoch), UTC).isoformat(timespec="seconds")
+            return datetime.fromtimestamp(int(epoch), UTC)
         except (ValueError, OverflowError, OSError):
             raise RelookError(
                 f"SOURCE_DATE_EPOCH is {epoch!r}",

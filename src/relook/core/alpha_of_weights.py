@@ -49,7 +49,10 @@ class AlphaOfWeights:
         self._within = within / np.maximum(profiles.size - 1, 1)
         self._points = self._centred_points(agreement)
         self._tabled = self._table(agreement.differences)
-        self.width = max(profiles.n_profiles, profiles.n_values, profiles.value_index.size, 1)
+        tables = [self._profiles_of_values, self._unanimous]
+        if self._moves:
+            tables.append(self._values_of_profiles)
+        self.width = max(1, *(table.n_terms for table in tables))
 
     def alphas(self, weights: FloatArray) -> FloatArray:
         """Return alpha of each weighting; nan where it is undefined.

@@ -29,9 +29,9 @@ from relook.core.exact import (
     IntArray,
     grouped_sums,
     quotients,
-    tie_levels,
     widened,
 )
+from relook.core.ties import tie_levels
 from relook.errors import RelookError
 
 

@@ -13,11 +13,12 @@ from relook.core.agreement import Agreement
 from relook.core.contributions import (
     check_groups,
     coder_index,
-    value_pair_parts,
     label_parts,
     shares,
+    value_pair_parts,
 )
-from relook.core.exact import FloatArray, IntArray, grouped_sums, tie_levels
+from relook.core.exact import FloatArray, IntArray, grouped_sums
+from relook.core.ties import tie_levels
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -19,8 +19,6 @@ BoolArray = npt.NDArray[np.bool_]
 ExactArray = npt.NDArray[Any]
 
 _LIMIT = 2**62
-#: Relative difference up to which two figures are a tie: 12 significant digits.
-_TIE = 1e-12
 
 
 def largest(values: ExactArray) -> int:
@@ -107,19 +105,3 @@ def grouped_sums(group: IntArray, terms: FloatArray, n_groups: int) -> FloatArra
     high = np.bincount(group, weights=upper, minlength=n_groups)
     low = np.bincount(group, weights=terms - upper, minlength=n_groups)
     return np.asarray(high + low, dtype=np.float64)
-
-
-def tie_levels(scores: FloatArray) -> IntArray:
-    """Number scores from 0 for the highest; scores equal to 12 significant digits share a number.
-
-    Parameters
-    ----------
-    scores : float array of shape (n,)
-    """
-    if scores.size == 0:
-        return np.zeros(0, dtype=np.int64)
-    distinct, which = np.unique(scores, return_inverse=True)
-    distinct = distinct[::-1]
-    size = np.maximum(np.abs(distinct[1:]), np.abs(distinct[:-1]))
-    levels = np.concatenate([[0], np.cumsum(distinct[:-1] - distinct[1:] > _TIE * size)])
-    return np.asarray(levels[::-1][which])

@@ -15,7 +15,8 @@ from relook.core.agreement import Agreement, measure_agreement
 from relook.core.contributions import label_pair_parts
 from relook.core.difference_base import CoordinateDifferences, Values
 from relook.core.differences import doubled_midranks
-from relook.core.exact import FloatArray, IntArray, quotients, tie_levels
+from relook.core.exact import FloatArray, IntArray, quotients
+from relook.core.ties import tie_levels
 from relook.errors import RelookError
 
 #: Difference functions whose labels can be merged: what a merged label means is plain.
@@ -81,7 +82,9 @@ def merged_values(agreement: Agreement, groups: Sequence[Sequence[int]]) -> tupl
     seen: set[int] = set()
     for group in groups:
         codes = sorted(set(group))
-        if codes and not 0 <= codes[0] <= codes[-1] < n_values:
+        if not codes:
+            continue
+        if not 0 <= codes[0] <= codes[-1] < n_values:
             raise RelookError(f"value codes must lie between 0 and {n_values - 1}; got {codes}")
         if seen.intersection(codes):
             raise RelookError("a label can be merged into one group only")

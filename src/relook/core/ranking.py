@@ -17,12 +17,10 @@ from relook.core.agreement import Agreement
 from relook.core.contributions import intensity as item_intensities
 from relook.core.contributions import profile_contributions
 from relook.core.exact import BoolArray, FloatArray, IntArray
+from relook.core.ties import TIE, dealt_in_turn, heaviest_pairs, tie_levels, tied_blocks
 from relook.errors import RelookError
 
 RankBy = Literal["contribution", "doubt", "intensity"]
-
-#: Scores closer than this, relative to the larger, are a tie (12 significant digits).
-TIE = 1e-12
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -41,6 +39,8 @@ class RankedVariable:
         was not asked for. nan counts as none.
     doubt_within_tie : float array of shape (n_items,) or None
         Tells between items of equal `doubt`.
+    leave_out : bool array of shape (n_items,) or None
+        Items that need no second look on this variable, such as those decided already.
     """
 
     name: str
@@ -48,6 +48,7 @@ class RankedVariable:
     weight: float = 1.0
     doubt: FloatArray | None = None
     doubt_within_tie: FloatArray | None = None
+    leave_out: BoolArray | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -66,7 +67,7 @@ class Ranking:
         One variable: the item's contribution to D_o. Several: the sum of weight × chance-scaled
         contribution over all its variables.
     carried_in_all : float
-        `carried` summed over all items of the data: D_o, or Σ weight × n (1 − alpha).
+        Over all items of the data, left-out ones too: D_o, or Σ weight × n (1 − alpha).
     tied : int array of shape (n,)
         Numbers the runs of items whose scores are equal to 12 significant digits.
     row_start : int array of shape (n + 1,)
@@ -149,7 +150,7 @@ def rank_items(
     _check(variables, item_hash, rank_by, priority)
     several = len(variables) > 1
     # Variables by items; the few variables of a project keep this small.
-    disputed = np.stack([_disputed_items(v.agreement) for v in variables])
+    disputed = np.stack([_disputed_items(v) for v in variables])
     weighted = np.stack([_of_items(v, _carried_by_profile(v, several)) for v in variables])
     intensity = np.stack([_intensity(v, several) for v in variables])
     weighted_disputed = np.where(disputed, weighted, 0.0)
@@ -170,8 +171,11 @@ def rank_items(
         keys += _doubt_keys(variables, several, disputed, items)[1:]
     if rank_by != "intensity":
         keys.append(intensity.sum(axis=0)[items])
-    block, tied = _blocks(keys)
-    order = _in_turn(block, pair_rank, item_hash[items])
+    block, tied = tied_blocks(keys)
+    carried = np.sum(
+        [_kept(v, weights) for v, weights in zip(variables, weighted, strict=True)], axis=0
+    )
+    order = dealt_in_turn(block, pair_rank, item_hash[items])
     items = items[order]
     row_start, row_variable = _rows(variables, disputed[:, items], weighted[:, items])
     contribution = np.stack(
@@ -184,7 +188,7 @@ def rank_items(
         variables=tuple(v.name for v in variables),
         item_index=items,
         score=score[items],
-        carried=weighted.sum(axis=0)[items],
+        carried=np.asarray(carried[items]),
         carried_in_all=float(weighted.sum()),
         tied=tied[order],
         row_start=row_start,
@@ -194,23 +198,6 @@ def rank_items(
             [np.nan if d_o is None else d_o for d_o in observed], dtype=np.float64
         ),
     )
-
-
-def tie_levels(scores: FloatArray) -> IntArray:
-    """Number scores from 0 for the highest; scores equal to 12 significant digits share a number.
-
-    Parameters
-    ----------
-    scores : float array of shape (n,)
-    """
-    if scores.size == 0:
-        return np.zeros(0, dtype=np.int64)
-    distinct, which = np.unique(scores, return_inverse=True)
-    distinct = distinct[::-1]
-    size = np.maximum(np.abs(distinct[1:]), np.abs(distinct[:-1]))
-    begins = distinct[:-1] - distinct[1:] > TIE * size
-    levels = np.concatenate([[0], np.cumsum(begins)])
-    return np.asarray(levels[::-1][which])
 
 
 def _check(
@@ -239,8 +226,15 @@ def _of_items(variable: RankedVariable, by_profile: FloatArray) -> FloatArray:
     return np.asarray(np.append(by_profile, 0.0)[variable.agreement.profile_of_item])
 
 
-def _disputed_items(agreement: Agreement) -> BoolArray:
-    return np.asarray(np.append(agreement.disputed_profiles, False)[agreement.profile_of_item])
+def _disputed_items(variable: RankedVariable) -> BoolArray:
+    agreement = variable.agreement
+    disputed = np.append(agreement.disputed_profiles, False)[agreement.profile_of_item]
+    return np.asarray(disputed if variable.leave_out is None else disputed & ~variable.leave_out)
+
+
+def _kept(variable: RankedVariable, weights: FloatArray) -> FloatArray:
+    """The weights of items that are not left out, 0 for the others."""
+    return weights if variable.leave_out is None else np.where(variable.leave_out, 0.0, weights)
 
 
 def _factor(variable: RankedVariable, several: bool) -> float:
@@ -307,32 +301,6 @@ def _doubt_keys(
     ]
 
 
-def _blocks(keys: Sequence[FloatArray]) -> tuple[IntArray, IntArray]:
-    """Number the runs of items that all keys leave tied, and those that the first leaves tied."""
-    first = block = tie_levels(keys[0])
-    for key in keys[1:]:
-        level = tie_levels(key)
-        width = int(level.max(initial=0)) + 1
-        if width > 1:
-            _, block = np.unique(block * width + level, return_inverse=True)
-    return block, first
-
-
-def _in_turn(block: IntArray, pair_rank: IntArray, item_hash: IntArray) -> IntArray:
-    """Order items by block; within a block deal them in turn over their label pairs."""
-    by_hash = np.argsort(item_hash, kind="stable")
-    width = int(pair_rank.max(initial=0)) + 1
-    group = block * width + pair_rank
-    by_group = by_hash[np.argsort(group[by_hash], kind="stable")]
-    begins = np.flatnonzero(np.diff(group[by_group], prepend=-1))
-    length = np.diff(np.append(begins, group.size))
-    turn = np.empty(group.size, dtype=np.int64)
-    turn[by_group] = np.arange(group.size) - np.repeat(begins, length)
-    # Items stand by block and pair already, so one stable sort by (block, turn) is enough.
-    longest = int(turn.max(initial=0)) + 1
-    return by_group[np.argsort((block * longest + turn)[by_group], kind="stable")]
-
-
 def _pair_ranks(
     variables: Sequence[RankedVariable], several: bool, heaviest: IntArray, items: IntArray
 ) -> IntArray:
@@ -344,47 +312,18 @@ def _pair_ranks(
     totals, pair_of_profile = [], []
     offset = 0
     for variable in variables:
-        of_profile, total = _heaviest_pairs(variable.agreement)
+        of_profile, total = heaviest_pairs(variable.agreement)
         pair_of_profile.append(np.append(of_profile + offset, -1))
         totals.append(total * _factor(variable, several))
         offset += total.size
     every = np.concatenate(totals)
     rank = np.empty(offset, dtype=np.int64)
-    rank[np.argsort(-every, kind="stable")] = np.arange(offset)
+    rank[np.argsort(tie_levels(every), kind="stable")] = np.arange(offset)
     pair = np.zeros(items.size, dtype=np.int64)
     for at, variable in enumerate(variables):
         own = heaviest == at
         pair[own] = pair_of_profile[at][variable.agreement.profile_of_item[items[own]]]
     return rank[pair] if offset else pair
-
-
-def _heaviest_pairs(agreement: Agreement) -> tuple[IntArray, FloatArray]:
-    """The pair of labels that contributes most within each profile, and what each pair carries.
-
-    Returns
-    -------
-    of_profile : int array of shape (n_profiles,)
-        Position in `total`, -1 where labels do not differ. Among equal pairs of a profile the one
-        that contributes more over all items.
-    total : float array of shape (n_pairs,)
-        Contribution of each pair to D_o.
-    """
-    profiles = agreement.profiles
-    profile, first, second = profiles.value_pairs()
-    low, high = profiles.value_index[first], profiles.value_index[second]
-    pair, which = np.unique(low * profiles.n_values + high, return_inverse=True)
-    delta = agreement.differences.between(low, high)
-    scale = max(1, agreement.n_pairable_labels)
-    within = 2.0 * profiles.count[first] * profiles.count[second] * delta
-    part = within / (profiles.size[profile] - 1) / scale
-    weights = part * profiles.multiplicity[profile]
-    total = np.asarray(np.bincount(which, weights=weights, minlength=pair.size), dtype=np.float64)
-    of_profile = np.full(profiles.n_profiles, -1, dtype=np.int64)
-    if profile.size:
-        order = np.lexsort((which, -total[which], tie_levels(part), profile))
-        heads = np.flatnonzero(np.diff(profile[order], prepend=-1))
-        of_profile[profile[order][heads]] = which[order][heads]
-    return of_profile, total
 
 
 def _rows(

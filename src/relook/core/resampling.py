@@ -315,7 +315,7 @@ class _ClusterDraw:
     def blocks(self, rng: np.random.Generator, resamples: int, width: int) -> Iterator[FloatArray]:
         """Yield weights of shape (n_profiles, n_block)."""
         n = self.profiles_of_clusters.n_columns
-        width = max(width, n, self.profiles_of_clusters.n_entries)
+        width = max(width, self.profiles_of_clusters.n_terms)
         for size in _block_sizes(resamples, width):
             drawn = rng.integers(0, n, size=(size, n)) + np.arange(size)[:, None] * n
             counts = np.bincount(drawn.ravel(), minlength=size * n).reshape(size, n)

@@ -9,7 +9,8 @@ from typing import Literal
 import numpy as np
 
 from relook.core.exact import FloatArray, IntArray
-from relook.core.ranking import TIE, Ranking
+from relook.core.ranking import Ranking
+from relook.core.ties import TIE
 from relook.errors import RelookError
 
 BoundBy = Literal["top", "share", "hours", "default share", "default top", "all disputed items"]

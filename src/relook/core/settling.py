@@ -12,12 +12,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from relook.core import settled_sums
 from relook.core.agreement import NO_VARIATION, NOTHING_PAIRABLE, Agreement, measure_agreement
 from relook.core.consensus import Consensus, extend_values
 from relook.core.differences import Values
 from relook.core.exact import BoolArray, FloatArray, IntArray
 from relook.core.labels import CodedLabels
+from relook.core.settled_base import Base, base_of
+from relook.core.settled_sums import alternatives, sequence
 from relook.errors import RelookError
 
 #: In `agreement_after`: the item was ruled impossible to code, so its labels leave the sums.
@@ -145,10 +146,10 @@ def settled_alphas(
         Each entry settles one item and leaves all others as they are. Settling an item with a
         single label changes nothing, since it is not pairable.
     """
-    base = settled_sums.base_of(agreement, values)
+    base = base_of(agreement, values)
     if base.n == 0:
         return _nothing_pairable(profile_index.size)
-    observed, expected = settled_sums.alternatives(base, profile_index, candidate)
+    observed, expected = alternatives(base, profile_index, candidate)
     return _figures(base, observed, expected)
 
 
@@ -173,7 +174,7 @@ def prospect(agreement: Agreement, order: IntArray, consensus: Consensus) -> Pro
         raise RelookError("an item without labels cannot be settled by its consensus label")
     cautious, values = decided_values(agreement, consensus, most_used=True)
     other, _ = decided_values(agreement, consensus, most_used=False)
-    base = settled_sums.base_of(agreement, values)
+    base = base_of(agreement, values)
     ties = np.concatenate([[0], np.cumsum(consensus.tie[profiles])])
     if base.n == 0:
         nothing = _nothing_pairable(order.size + 1)
@@ -183,7 +184,7 @@ def prospect(agreement: Agreement, order: IntArray, consensus: Consensus) -> Pro
         if ends and bool(np.array_equal(decided[profiles], cautious[profiles])):
             ends.append(ends[0])
             continue
-        observed, expected = settled_sums.sequence(base, profiles, decided[profiles])
+        observed, expected = sequence(base, profiles, decided[profiles])
         ends.append(_figures(base, observed, expected))
     return Prospect(order, ends[0], ends[1], ties)
 
@@ -295,7 +296,7 @@ def agreement_after(
     )
 
 
-def _figures(base: settled_sums.Base, observed: FloatArray, expected: FloatArray) -> SettledFigures:
+def _figures(base: Base, observed: FloatArray, expected: FloatArray) -> SettledFigures:
     """Figures from the sums over pairs, nan where expected disagreement is 0."""
     n = base.n
     d_o = observed / (base.scale * n)

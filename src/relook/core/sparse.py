@@ -51,6 +51,12 @@ class SparseCounts:
         """The number of entries."""
         return int(self.row.size)
 
+    @property
+    def n_terms(self) -> int:
+        """How many numbers a product holds at once, per column of the block."""
+        inner = 0 if self._dense is not None else self.n_entries
+        return max(self.n_rows, self.n_columns, inner)
+
     def times(self, block: FloatArray) -> FloatArray:
         """Return the product with a block of shape (n_columns, n_block).
 

@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cache
 
+from relook.core.decisions import Ruling
 from relook.errors import Place, Problem, RelookError
 from relook.project.collected import RowReport
 from relook.project.rounds import Round, RoundRow
@@ -79,7 +80,7 @@ class Candidate:
     report: RowReport
 
     @property
-    def ruled(self) -> tuple[str, str | None]:
+    def ruled(self) -> tuple[Ruling, str | None]:
         """The ruling and its label."""
         return self.reading.ruling, self.reading.label
 

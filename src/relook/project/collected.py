@@ -160,4 +160,4 @@ class Collected:
     def mend_keys(self) -> tuple[str, ...]:
         """Row codes of the known rows that were not taken, each once, in the order reported."""
         reports: Iterable[RowReport | Conflict] = (*self.rejected, *self.conflicts)
-        return tuple(dict.fromkeys(report.key for report in reports if report.item))
+        return tuple(dict.fromkeys(report.key for report in reports if report.item and report.key))

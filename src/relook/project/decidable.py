@@ -6,7 +6,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import replace
 from typing import Any
 
-from relook.core.differences import difference_function
+from relook.core.differences import DIFFERENCE_FUNCTIONS
 from relook.project.rounds import Round
 from relook.project.settings import Settings
 from relook.tables.schema import Variable
@@ -30,6 +30,12 @@ def variables_to_settings(variables: Iterable[SheetVariable]) -> list[dict[str, 
         }
         for variable in variables
     ]
+
+
+def takes_numbers(variable: Variable) -> bool:
+    """Whether the labels of a variable are numbers."""
+    kind = DIFFERENCE_FUNCTIONS.get(variable.difference)
+    return kind is not None and kind.needs == "number"
 
 
 def variables_of_round(held: Round, settings: Settings) -> dict[str, SheetVariable]:
@@ -77,7 +83,7 @@ def _from_declaration(variable: Variable) -> SheetVariable:
             labels=variable.labels or (),
             separator=separator if isinstance(separator, str) else None,
         )
-    numeric = variable.labels is None and difference_function(variable.difference).numeric
+    numeric = variable.labels is None and takes_numbers(variable)
     return SheetVariable(
         name=variable.name, entry="number" if numeric else "choice", labels=variable.labels or ()
     )

@@ -115,8 +115,8 @@ def explain(loaded: Loaded, item: str) -> list[Explanation]:
     RelookError
         No such item, or one without labels.
     """
-    number = loaded.item_number(item)
-    if number is None:
+    number = int(loaded.item_numbers([item])[0])
+    if number < 0:
         close = nearest(item, loaded.labels.items)
         raise RelookError(
             f'no item "{item}" in the label table',

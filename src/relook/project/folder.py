@@ -49,6 +49,15 @@ class Project:
         return cls(root, load_settings(root / SETTINGS_FILE))
 
     @property
+    def shown_root(self) -> str:
+        """The folder as the user would type it from where they stand."""
+        try:
+            shown = os.path.relpath(self.root)
+        except ValueError:  # another drive
+            return str(self.root)
+        return str(self.root) if Path(shown).parts[:2] == ("..", "..") else shown
+
+    @property
     def rounds_folder(self) -> Path:
         """Where the rounds are."""
         return self.root / "rounds"

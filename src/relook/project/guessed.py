@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import secrets
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
@@ -66,7 +67,7 @@ def settings_for_folder(project: Project, folder: Path) -> Settings:
     items = settings.items
     return replace(
         settings,
-        project=secrets.token_hex(16),
+        project=settings.project or secrets.token_hex(16),
         labels=replace(
             settings.labels,
             files=tuple(_from(folder, project.root, path) for path in settings.labels.files),
@@ -83,15 +84,23 @@ def settings_for_folder(project: Project, folder: Path) -> Settings:
     )
 
 
-def write_project(project: Project, folder: Path, *, force: bool = False) -> Project:
-    """Write a guessed project's relook.toml and open it.
+def in_folder(project: Project, folder: Path) -> Project:
+    """Return a guessed project as it will stand in a folder; nothing is written.
+
+    Paths are relative to the folder where it exists, as they are to be kept; else absolute, for no
+    path leads through a folder that is not there.
+    """
+    folder = folder.absolute()
+    return Project(folder, settings_for_folder(project, folder))
+
+
+def write_settings(project: Project, *, force: bool = False) -> None:
+    """Write a project's relook.toml.
 
     Parameters
     ----------
     project : Project
-        As `guessed_project` made it.
-    folder : Path
-        Made where missing.
+        As `in_folder` made it; the folder is made where missing.
     force : bool
         Replace a relook.toml that is there.
 
@@ -100,21 +109,48 @@ def write_project(project: Project, folder: Path, *, force: bool = False) -> Pro
     RelookError
         The folder holds a relook.toml, or cannot be written.
     """
-    file = folder / SETTINGS_FILE
+    file = project.root / SETTINGS_FILE
     if file.exists() and not force:
         raise RelookError(
             "there is a project in this folder already",
             where=Place(str(file)),
             mend="go on with it, choose another folder, or add --force to replace its settings",
         )
-    settings = settings_for_folder(project, folder.absolute())
-    write_whole(file, settings_toml(settings).encode("utf-8"))
-    return Project.open(folder)
+    write_whole(file, settings_toml(project.settings).encode("utf-8"))
+
+
+@contextlib.contextmanager
+def folder_for(project: Project) -> Iterator[Project]:
+    """Make a guessed project's folder, and take it away again if the work in it fails.
+
+    Yields
+    ------
+    Project
+        With paths from the folder, as relook.toml is to keep them.
+    """
+    made = not project.root.exists()
+    try:
+        project.root.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise RelookError(
+            f"cannot make the folder: {error.strerror or error}",
+            where=Place(str(project.root)),
+            mend="check that you may write there",
+        ) from None
+    try:
+        yield Project(project.root, settings_for_folder(project, project.root))
+    except BaseException:
+        if made:
+            with contextlib.suppress(OSError):  # not empty: something was written after all
+                project.root.rmdir()
+        raise
 
 
 def _from(folder: Path, root: Path, path: Path) -> Path:
-    """A path as seen from a folder; absolute only where the two lie on different drives."""
+    """A path as seen from a folder; absolute where no relative one leads there."""
     whole = (root / path).absolute()
+    if not folder.is_dir():
+        return whole
     try:
         return Path(Path(os.path.relpath(whole, folder)).as_posix())
     except ValueError:

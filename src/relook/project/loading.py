@@ -8,9 +8,11 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
+import pandas as pd
 
 from relook.core.agreement import Agreement, measure_agreement
 from relook.core.differences import difference_function
+from relook.core.exact import IntArray
 from relook.errors import Problem
 from relook.project.folder import Project
 from relook.tables.items import ItemData, read_items
@@ -48,10 +50,9 @@ class Loaded:
         """A line per file that was read: what it was taken for."""
         return self.labels.said + (self.items.said if self.items is not None else ())
 
-    def item_number(self, item: str) -> int | None:
-        """Return the index of an item's id, None where there is none."""
-        found = np.flatnonzero(np.asarray(self.labels.items, dtype=object) == item)
-        return int(found[0]) if found.size else None
+    def item_numbers(self, items: Sequence[str]) -> IntArray:
+        """Return the index of each item's id, -1 for those without an entry in the label table."""
+        return pd.Index(self.labels.items).get_indexer(pd.Index(list(items), dtype=object))
 
 
 def load(project: Project, *, only: Sequence[str] | None = None) -> Loaded:

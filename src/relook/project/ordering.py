@@ -47,7 +47,7 @@ def order_items(
     *,
     seed: int,
     with_doubt: bool = False,
-    leave_out: BoolArray | None = None,
+    leave_out: Mapping[str, BoolArray] | None = None,
     n_audit_items: int = 0,
     overlap: float = 0.0,
 ) -> Ordering:
@@ -61,8 +61,8 @@ def order_items(
         Keys the last tie-break, a hash of the item's id.
     with_doubt : bool
         Estimate doubt even where the order does not ask for it.
-    leave_out : bool array of shape (n_items,), optional
-        Items that are settled or still out.
+    leave_out : mapping of str to bool array of shape (n_items,), optional
+        By variable: items that are settled or still out there.
     n_audit_items : int
     overlap : float
         Share of the rows that a second adjudicator gets too.
@@ -74,12 +74,15 @@ def order_items(
     """
     doubts = doubts_of(loaded) if with_doubt or queue.rank_by == "doubt" else {}
     variables = [
-        ranked_variable(loaded.labels.variables[name].variable, agreement, doubts.get(name))
+        ranked_variable(
+            loaded.labels.variables[name].variable,
+            agreement,
+            doubts.get(name),
+            None if leave_out is None else leave_out[name],
+        )
         for name, agreement in loaded.agreements.items()
     ]
     priority = priorities(loaded)
-    if leave_out is not None and bool(leave_out.any()):
-        priority = np.where(leave_out, 0.0, 1.0 if priority is None else priority)
     rank_by: RankBy = queue.rank_by
     ranking = rank_items(variables, item_hashes(loaded, seed), rank_by=rank_by, priority=priority)
     selection = select_head(
@@ -95,7 +98,10 @@ def order_items(
 
 
 def ranked_variable(
-    variable: Variable, agreement: Agreement, doubt: Doubt | None
+    variable: Variable,
+    agreement: Agreement,
+    doubt: Doubt | None,
+    leave_out: BoolArray | None = None,
 ) -> RankedVariable:
     """Return a variable as it enters the ranking, with its doubt where there is one."""
     return RankedVariable(
@@ -104,6 +110,7 @@ def ranked_variable(
         weight=variable.weight,
         doubt=None if doubt is None else doubt.for_ranking,
         doubt_within_tie=None if doubt is None else doubt.doubt,
+        leave_out=leave_out,
     )
 
 

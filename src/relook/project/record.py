@@ -13,11 +13,11 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any
 
 from relook.core.decisions import Decision
 from relook.errors import Place, Problem, RelookError
 from relook.project.folder import Project, write_whole
+from relook.project.recorded import Recorded, entry_from_dict, entry_to_dict
 
 FORMAT = 1
 _NAME = re.compile(r"\d{8}T\d{12}Z-[0-9a-f]{16}\.jsonl")
@@ -26,49 +26,6 @@ _RESTORE = (
     "restore it from a copy of the project folder, or run "
     "`relook collect --rebuild` to make it anew from the kept worksheets"
 )
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Recorded:
-    """A decision as the record holds it.
-
-    Attributes
-    ----------
-    decision : Decision
-    key : str
-        Row code of the row it came in; "" for rulings made elsewhere.
-    worksheet : str
-        Id of the worksheet; "" for rulings made elsewhere.
-    source : str
-        SHA-256 of the returned file.
-    modified : str
-        When that file says it was last saved; "" where it does not say.
-    sheet, cell : str
-        Where in the file, such as "Queue" and "F5".
-    found : str
-        What the cell showed, where that was not exactly the label; else "".
-    supersedes : str
-        Id of the decision that this one takes the place of; "" where there was none.
-    labels_digest : str
-        Digest of the item's labels on the variable as the adjudicator was asked about them.
-    """
-
-    decision: Decision
-    key: str = ""
-    worksheet: str = ""
-    source: str = ""
-    modified: str = ""
-    sheet: str = ""
-    cell: str = ""
-    found: str = ""
-    supersedes: str = ""
-    labels_digest: str = ""
-
-    @property
-    def value(self) -> tuple[str, str | None, str, str]:
-        """What was decided and said: ruling, label, reason, note."""
-        held = self.decision
-        return held.ruling, held.label, held.reason, held.note
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -115,6 +72,15 @@ class Record:
         return tuple(entry.decision for entry in self.entries)
 
     @property
+    def names(self) -> frozenset[str]:
+        """Names of the files."""
+        return frozenset(file.name for file in self.files)
+
+    def with_file(self, added: RecordFile) -> Record:
+        """Return the record with one more file, in its place."""
+        return Record(tuple(sorted((*self.files, added), key=_place)))
+
+    @property
     def heads(self) -> dict[str, str]:
         """Name and digest of each file that no other follows."""
         followed = {name for file in self.files for name in file.follows}
@@ -135,6 +101,10 @@ class Record:
     def next_stamp(self, now: datetime) -> str:
         """Return the time of the next file: now, or that of the latest file where it is later."""
         return max([stamp_of(now), *(file.stamp for file in self.files)])
+
+
+def _place(file: RecordFile) -> tuple[str, int, str]:
+    return file.stamp, file.generation, file.digest
 
 
 def stamp_of(moment: datetime) -> str:
@@ -177,7 +147,7 @@ def make_file(
         "follows": record.heads,
         "decisions": len(entries),
     }
-    lines = [header, *(_entry_to_dict(entry) for entry in entries)]
+    lines = [header, *(entry_to_dict(entry) for entry in entries)]
     data = "".join(json.dumps(line, ensure_ascii=True) + "\n" for line in lines).encode("ascii")
     compact = re.sub(r"[-:.]", "", stamp)
     return f"{compact}-{hashlib.sha256(data).hexdigest()[:_DIGEST_LENGTH]}.jsonl", data
@@ -231,8 +201,7 @@ def inspect_record(project: Project) -> tuple[Record, list[Problem]]:
             for name in sorted(file.follows)
             if name not in present and name not in broken
         )
-    ordered = sorted(files, key=lambda file: (file.stamp, file.generation, file.digest))
-    return Record(tuple(ordered)), problems
+    return Record(tuple(sorted(files, key=_place))), problems
 
 
 def record_paths(project: Project) -> list[Path]:
@@ -288,7 +257,7 @@ def _read_file(project: Project, path: Path) -> RecordFile:
     if digest[:_DIGEST_LENGTH] != path.stem.rpartition("-")[2]:
         raise RelookError("the file was changed after it was written", where=where, mend=_RESTORE)
     try:
-        return _parse(project, path.name, digest, data)
+        return parse_file(project, path.name, data)
     except (ValueError, TypeError, KeyError) as error:
         raise RelookError(
             f"the file is no part of a record ({type(error).__name__})", where=where, mend=_RESTORE
@@ -316,7 +285,17 @@ def _foreign_name(path: Path, digest: str, where: Place) -> RelookError:
     )
 
 
-def _parse(project: Project, name: str, digest: str, data: bytes) -> RecordFile:
+def parse_file(project: Project, name: str, data: bytes) -> RecordFile:
+    """Read the bytes of a file of the record.
+
+    Raises
+    ------
+    RelookError
+        Of a newer format or another project.
+    ValueError, TypeError, KeyError
+        Not written by relook.
+    """
+    digest = hashlib.sha256(data).hexdigest()
     where = Place(project.relative(project.decisions_folder / name))
     lines = [json.loads(line) for line in data.splitlines()]
     header = lines[0]
@@ -335,7 +314,7 @@ def _parse(project: Project, name: str, digest: str, data: bytes) -> RecordFile:
     stamp, generation = str(header["stamp"]), int(header["generation"])
     stem = name.removesuffix(".jsonl")
     entries = tuple(
-        _entry_from_dict(line, (stamp, f"{generation:08d}", digest), f"{stem}:{number}")
+        entry_from_dict(line, (stamp, f"{generation:08d}", digest), f"{stem}:{number}")
         for number, line in enumerate(lines[1:], start=1)
     )
     return RecordFile(
@@ -345,57 +324,4 @@ def _parse(project: Project, name: str, digest: str, data: bytes) -> RecordFile:
         generation=generation,
         follows={str(key): str(value) for key, value in header["follows"].items()},
         entries=entries,
-    )
-
-
-def _entry_to_dict(entry: Recorded) -> dict[str, Any]:
-    held = entry.decision
-    return {
-        "adjudicator": held.adjudicator,
-        "round": held.round,
-        "kind": held.kind,
-        "item": held.item,
-        "variable": held.variable,
-        "ruling": held.ruling,
-        "label": held.label,
-        "reason": held.reason,
-        "note": held.note,
-        "key": entry.key,
-        "worksheet": entry.worksheet,
-        "source": entry.source,
-        "modified": entry.modified,
-        "sheet": entry.sheet,
-        "cell": entry.cell,
-        "found": entry.found,
-        "supersedes": entry.supersedes,
-        "labels_digest": entry.labels_digest,
-    }
-
-
-def _entry_from_dict(line: Mapping[str, Any], order: tuple[str, ...], name: str) -> Recorded:
-    ruling = line["ruling"]
-    if ruling not in ("label", "cannot be coded", "withdraw"):
-        raise ValueError(f"{ruling!r} is no ruling")
-    if (ruling == "label") != isinstance(line["label"], str):
-        raise ValueError("a ruling and its label do not fit")
-    number = int(line["round"])
-    decision = Decision(
-        item=str(line["item"]),
-        variable=str(line["variable"]),
-        adjudicator=str(line["adjudicator"]),
-        ruling=ruling,
-        label=line["label"],
-        reason=str(line["reason"]),
-        note=str(line["note"]),
-        round=number,
-        kind=str(line["kind"]),
-        # A later round asks anew, so a stale sheet of an earlier one cannot outdo its answer.
-        order=(f"{number:06d}", *order),
-        id=name,
-    )
-    texts = ("key", "worksheet", "source", "modified", "sheet", "cell", "found", "supersedes")
-    return Recorded(
-        decision=decision,
-        labels_digest=str(line["labels_digest"]),
-        **{name: str(line[name]) for name in texts},
     )

@@ -11,6 +11,7 @@ import re
 from collections.abc import Mapping, Sequence
 from dataclasses import asdict, dataclass
 from pathlib import Path
+from typing import Any
 
 from relook.errors import Place, Problem, RelookError
 from relook.project.folder import Project, write_whole
@@ -68,6 +69,9 @@ class Run:
         The record's newest files when it ran, digest by name.
     reinstate : bool
     files : tuple of LoggedFile
+    entries : tuple of mapping
+        Of rulings made elsewhere: what was taken, as written in the record. What worksheets hold is
+        read from the kept files instead.
     """
 
     kind: str
@@ -76,6 +80,7 @@ class Run:
     follows: Mapping[str, str]
     reinstate: bool
     files: tuple[LoggedFile, ...]
+    entries: tuple[Mapping[str, Any], ...] = ()
 
     def to_json(self) -> bytes:
         """Return the bytes of its log file."""
@@ -92,6 +97,7 @@ class Run:
             follows=dict(held["follows"]),
             reinstate=bool(held["reinstate"]),
             files=tuple(LoggedFile(**entry) for entry in held["files"]),
+            entries=tuple(dict(entry) for entry in held["entries"]),
         )
 
 

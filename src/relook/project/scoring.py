@@ -117,6 +117,7 @@ def score(
     *,
     seed: int,
     with_doubt: bool = False,
+    ordering: Ordering | None = None,
     resamples: int = RESAMPLES,
     confidence_level: float = CONFIDENCE_LEVEL,
 ) -> Score:
@@ -131,10 +132,13 @@ def score(
         For the resampling and the last tie-break.
     with_doubt : bool
         Estimate doubt even where the order does not ask for it.
+    ordering : Ordering, optional
+        One that was made already, as for a round.
     resamples : int
     confidence_level : float
     """
-    ordering = order_items(loaded, queue, seed=seed, with_doubt=with_doubt)
+    if ordering is None:
+        ordering = order_items(loaded, queue, seed=seed, with_doubt=with_doubt)
     variables = tuple(
         _score_variable(loaded, name, position, ordering, seed, resamples, confidence_level)
         for position, name in enumerate(loaded.agreements)

@@ -21,7 +21,8 @@ from typing import Literal
 from relook.core.decisions import Decision
 from relook.project.checking import Candidate, Checked
 from relook.project.collected import Conflict, RowReport, Version
-from relook.project.record import Record, Recorded
+from relook.project.record import Record
+from relook.project.recorded import Recorded
 
 Standing = Literal["new", "unchanged", "older"]
 
@@ -131,15 +132,19 @@ def _weigh_row(
     new = [(file, candidate) for how, file, candidate in judged if how == "new"]
     # A copy that says what the record says already contradicts another only if it is news itself.
     same = [
-        (file, candidate)
-        for how, file, candidate in judged
-        if how == "unchanged" and not file.seen
+        (file, candidate) for how, file, candidate in judged if how == "unchanged" and not file.seen
     ]
     if reinstate:
         new, older = [*new, *older], []
+    answered = any(how == "unchanged" for how, _, _ in judged) or bool(new)
     result.older.extend(
-        _said(candidate, "an older version of the row says so; a later one stands")
-        for _, candidate in older
+        _said(
+            candidate,
+            "an older version of the row says so; a later one stands",
+            "add --reinstate to bring it back",
+        )
+        for file, candidate in older
+        if not (file.seen and answered)
     )
     contenders = [*new, *same] if new else []
     if len({candidate.ruled for _, candidate in contenders}) > 1:
@@ -186,7 +191,10 @@ def _take(file: CheckedFile, candidate: Candidate, past: _Past, result: Weighed)
         return
     if candidate.reading.adjusted:
         result.adjusted.append(
-            _said(candidate, f'taken as "{label or ruling}"; {candidate.reading.adjusted} differ')
+            _said(
+                candidate,
+                f'taken as "{label or ruling}"; it differs by {candidate.reading.adjusted}',
+            )
         )
     report = candidate.report
     result.entries.append(
@@ -226,7 +234,7 @@ def _version(candidate: Candidate) -> Version:
     )
 
 
-def _said(candidate: Candidate, reason: str) -> RowReport:
+def _said(candidate: Candidate, reason: str, mend: str = "") -> RowReport:
     report = candidate.report
     return RowReport(
         worksheet=report.worksheet,
@@ -238,5 +246,5 @@ def _said(candidate: Candidate, reason: str) -> RowReport:
         variable=report.variable,
         found=report.found,
         reason=reason,
-        mend="add --reinstate to bring it back" if "older" in reason else "",
+        mend=mend,
     )

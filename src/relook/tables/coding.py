@@ -58,9 +58,9 @@ def code_variable(variable: Variable, flat: Flat, context: Context) -> Coding | 
     )
     if coded is None:
         return None
-    code_of_text = np.full(len(flat.texts), -1, dtype=np.int64)
+    code_of_text: IntArray = np.full(len(flat.texts), -1, dtype=np.int64)
     code_of_text[used] = coded.code_of_text
-    value = code_of_text[flat.text]
+    value: IntArray = code_of_text[flat.text]
     if coded.bad:
         bad = {int(used[at]): fault for at, fault in coded.bad.items()}
         for text, fault in bad.items():
@@ -68,12 +68,10 @@ def code_variable(variable: Variable, flat: Flat, context: Context) -> Coding | 
                 context.findings.add(fault.message + more, where, fault.mend)
         good = value >= 0
         flat, value = flat.take(good), value[good]
-    if flat.coder is None:
-        order = np.argsort(flat.item, kind="stable")
-        flat, value = flat.take(order), value[order]
-    else:
-        order = order_by_item_and_coder(flat.item, flat.coder, len(context.coders))
-        flat, value = flat.take(order), value[order]
+    coder = np.zeros(flat.item.size, dtype=np.int64) if flat.coder is None else flat.coder
+    order = order_by_item_and_coder(flat.item, coder, len(context.coders))
+    flat, value = flat.take(order), value[order]
+    if flat.coder is not None:
         keep = _single(variable, flat, value, context)
         if not keep.all():
             flat, value = flat.take(keep), value[keep]
@@ -109,9 +107,7 @@ def _more_rows(rows: IntArray) -> str:
     return f" (also in {word} {named}{f' and {left:,} more' if left > 0 else ''})"
 
 
-def _single(
-    variable: Variable, flat: Flat, value: IntArray, context: Context
-) -> BoolArray:
+def _single(variable: Variable, flat: Flat, value: IntArray, context: Context) -> BoolArray:
     """Which labels stay where a coder labelled an item more than once.
 
     The labels come sorted by item, coder and order of reading, so repeats are neighbours.
@@ -149,7 +145,9 @@ def _single(
     return keep
 
 
-def _report_conflict(variable: Variable, flat: Flat, start: int, stop: int, context: Context) -> None:
+def _report_conflict(
+    variable: Variable, flat: Flat, start: int, stop: int, context: Context
+) -> None:
     assert flat.coder is not None
     item, coder = context.items[flat.item[start]], context.coders[flat.coder[start]]
     first = context.place(flat, start)

@@ -1,9 +1,9 @@
 """Delimited text to a frame of text cells, with the rows that a spreadsheet shows.
 
-The shape of the file (how many cells each row has) is counted on its bytes first, so that a row that
-is too long or too short is an error with its row rather than cells that moved. Regular files are
-then read by the quick reader; files with quotes in odd places by the careful one. Both keep every
-character.
+The shape of the file (how many cells each row has) is counted on its bytes first, so that a row
+that is too long or too short is an error with its row rather than cells that moved. Regular files
+are then read by the quick reader; files with quotes in odd places by the careful one. Both keep
+every character.
 """
 
 from __future__ import annotations
@@ -21,7 +21,7 @@ from relook.core.exact import BoolArray, IntArray
 from relook.errors import Place, Problem, RelookError
 
 DELIMITERS = (",", ";", "\t", "|")
-_NAMES = {",": '","', ";": '";"', "\t": "tab", "|": '"|"'}
+_NAMES = {",": "comma", ";": "semicolon", "\t": "tab", "|": "bar"}
 _QUOTE, _LINE_FEED, _RETURN = 34, 10, 13
 #: More ragged rows than this are counted, not listed.
 _MOST = 1_000
@@ -52,8 +52,8 @@ class Cells:
 class _Shape:
     """How a file falls into rows and cells under one delimiter.
 
-    `widths` holds the cells of each row, 0 for a blank row; `regular` says that every quote opens or
-    closes a whole cell, so that quick and careful reading agree.
+    `widths` holds the cells of each row, 0 for a blank row; `regular` says that every quote opens
+    or closes a whole cell, so that quick and careful reading agree.
     """
 
     delimiter: str
@@ -129,9 +129,7 @@ def drop_blank(cells: Cells) -> Cells:
     if not blank.any():
         return Cells(cells.header, frame.reset_index(drop=True), cells.rows, cells.said)
     keep = ~blank
-    return Cells(
-        cells.header, frame[keep].reset_index(drop=True), cells.rows[keep], cells.said
-    )
+    return Cells(cells.header, frame[keep].reset_index(drop=True), cells.rows[keep], cells.said)
 
 
 def frame_of_text(records: Sequence[Sequence[str]], width: int) -> pd.DataFrame:
@@ -247,7 +245,7 @@ def _careful(data: bytes, file: str, shape: _Shape) -> pd.DataFrame:
 
 
 def _careful_shape(data: bytes, file: str, delimiter: str | None) -> _Shape:
-    """Try each delimiter with the careful reader; quotes that no delimiter explains are an error."""
+    """Try each delimiter with the careful reader; quotes that none explains are an error."""
     shapes, first_fault = [], None
     head = data.lstrip().split(b"\n", 1)[0]
     found = [d for d in DELIMITERS if d.encode() in head]
@@ -304,7 +302,7 @@ def _ragged_problems(shape: _Shape, file: str) -> list[Problem]:
         Problem(
             f"{_cells(int(shape.widths[at]))}, but the header has {shape.width:,}",
             Place(file, row=at + 1),
-            f"bring the row to {_cells(shape.width)}, or quote cells that hold the delimiter {name}",
+            f"bring the row to {_cells(shape.width)}, or quote cells that hold a {name}",
         )
         for at in found[:_MOST].tolist()
     ]

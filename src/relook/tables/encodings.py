@@ -43,9 +43,9 @@ def decode(data: bytes, file: str, encoding: str | None = None) -> Decoded:
     file : str
         As it is to be named in messages.
     encoding : str, optional
-        What the user says it is; found from the bytes where left out. Without a mark, bytes that are
-        UTF-8 are UTF-8. Others are taken for Windows-1252 only where every byte has a meaning in it
-        and nothing in the file reads as UTF-8; that is a guess, and `Decoded.said` says so.
+        What the user says it is; found from the bytes where left out. Without a mark, bytes that
+        are UTF-8 are UTF-8. Others are taken for Windows-1252 only where every byte has a meaning
+        in it and nothing in the file reads as UTF-8; that is a guess, and `Decoded.said` says so.
 
     Raises
     ------
@@ -72,7 +72,8 @@ def decode(data: bytes, file: str, encoding: str | None = None) -> Decoded:
 def _decode_as(data: bytes, file: str, encoding: str) -> Decoded:
     try:
         codec = codecs.lookup(encoding)
-        text = codec.decode(data, "strict")[0]
+        # Unlike the codec itself, this refuses codecs that are none of text.
+        text = data.decode(encoding)
     except LookupError:
         raise RelookError(
             f'"{encoding}" is not an encoding',
@@ -81,19 +82,17 @@ def _decode_as(data: bytes, file: str, encoding: str) -> Decoded:
         ) from None
     except (UnicodeError, ValueError) as fault:
         row = None
-        if isinstance(fault, UnicodeDecodeError) and "16" not in codec.name and "32" not in codec.name:
+        if (
+            isinstance(fault, UnicodeDecodeError)
+            and "16" not in codec.name
+            and "32" not in codec.name
+        ):
             row = _row_of(data, fault.start)
         raise RelookError(
             f"the bytes are not {encoding} text",
             where=Place(file, row=row),
             mend="leave the encoding out to have it found, or save the file as UTF-8",
         ) from None
-    if not isinstance(text, str):
-        raise RelookError(
-            f'"{encoding}" is not an encoding of text',
-            where=Place(file),
-            mend='use for instance "utf-8", "utf-16", "windows-1252" or "latin-1"',
-        )
     return Decoded(text.removeprefix("\ufeff").encode(), _SAID.get(codec.name, codec.name))
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from typing import TypeVar
 
 from relook.errors import Place, Problem, RelookError, Severity
@@ -11,6 +11,11 @@ from relook.errors import Place, Problem, RelookError, Severity
 MOST = 2_000
 T = TypeVar("T")
 _ORDER: dict[Severity, int] = {"error": 0, "warning": 1, "note": 2}
+
+
+def counted(number: int, noun: str) -> str:
+    """Return a number with its noun, such as "1 item" or "1,204 items"."""
+    return f"{number:,} {noun}" if number == 1 else f"{number:,} {noun}s"
 
 
 class Findings:
@@ -58,12 +63,17 @@ class Findings:
         """How many more problems of a severity will be kept."""
         return max(0, MOST - self._number[severity])
 
-    def count(self, number: int, severity: Severity = "error") -> None:
-        """Count problems that are not worth building because they would not be kept."""
-        self._number[severity] += number
+    def add_at(
+        self, rows: Sequence[int], message: str, place: Callable[[int], Place], mend: str
+    ) -> None:
+        """Keep one error for each of many rows; those beyond the limit are only counted."""
+        kept = rows[: self.room()]
+        for row in kept:
+            self.add(message, place(row), mend)
+        self._number["error"] += len(rows) - len(kept)
 
     def sorted(self) -> tuple[Problem, ...]:
-        """Return the problems: errors first, then by file and row, a last line for those left out."""
+        """Return the problems: errors first, then by file and row, and how many were left out."""
         kept = sorted(
             self._kept,
             key=lambda problem: (

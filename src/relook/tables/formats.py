@@ -160,6 +160,10 @@ def _choose_sheet(book: Book, title: str | None, wanted: Sequence[str]) -> Sheet
             "the workbook is empty", where=Place(book.file), mend="give a table with a header"
         )
     fitting = [sheet for sheet in filled if _header_row(sheet, wanted) is not None]
+    if not wanted:
+        # A sheet of remarks has one column; a table of labels has two at least.
+        wide = [sheet for sheet in fitting if max(_filled(row) for row in sheet.rows) > 1]
+        fitting = wide or fitting
     if len(fitting) > 1:
         visible = [sheet for sheet in fitting if not sheet.hidden]
         fitting = visible if len(visible) == 1 else fitting
@@ -182,10 +186,10 @@ def _no_fit(book: Book, sheets: Sequence[Sheet], wanted: Sequence[str]) -> Reloo
     found = {fold(header) for header in headers}
     missing = [column for column in wanted if fold(column) not in found]
     close = nearest(missing[0], headers) if missing else None
-    where = "the sheet has" if only else "no sheet has"
-    lack = "no columns" if only else "the columns"
+    lack = "the sheet lacks" if only else "no sheet has"
+    kind = "column" if len(missing or wanted) == 1 else "columns"
     return RelookError(
-        f"{where} {lack} {listed(missing or wanted)}; the headers are {listed(headers)}",
+        f"{lack} the {kind} {listed(missing or wanted)}; the headers are {listed(headers)}",
         where=Place(book.file, only),
         mend=f'did you mean "{close}"?' if close else "name columns that are there",
     )
@@ -235,9 +239,9 @@ def read_parquet(data: bytes, file: str) -> Cells:
         ) from None
     try:
         table = pq.read_table(io.BytesIO(data))
-    except (pa.ArrowException, OSError) as fault:
+    except (pa.ArrowException, OSError):
         raise RelookError(
-            f"the Parquet file cannot be read ({str(fault).splitlines()[0]})",
+            "the Parquet file is damaged",
             where=Place(file),
             mend="write it again, or give the table as CSV",
         ) from None
@@ -270,7 +274,7 @@ def _arrow_texts(column: Any, pa: Any) -> list[str]:
 
 
 def _float_text(value: float | None) -> str:
-    if value is None or value != value:  # noqa: PLR0124 (nan alone differs from itself)
+    if value is None or value != value:
         return ""
     return str(int(value)) if value == int(value) and abs(value) < 1e15 else repr(value)
 
@@ -305,8 +309,12 @@ def read_json_lines(data: bytes, file: str) -> Cells:
 
 def _json_record(line: str, where: Place, problems: list[Problem]) -> dict[str, str]:
     def texts(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
-        for name in {name for name, _ in pairs if sum(name == other for other, _ in pairs) > 1}:
-            problems.append(Problem(f'the key "{name}" occurs twice', where, "keep one of them"))
+        names = [name for name, _ in pairs]
+        problems.extend(
+            Problem(f'the key "{name}" occurs twice', where, "keep one of them")
+            for name in dict.fromkeys(names)
+            if names.count(name) > 1
+        )
         return dict(pairs)
 
     try:
@@ -320,7 +328,9 @@ def _json_record(line: str, where: Place, problems: list[Problem]) -> dict[str, 
         return {}
     if not isinstance(found, dict):
         problems.append(
-            Problem("the line is not a JSON object", where, 'write {"item": …, "coder": …} per line')
+            Problem(
+                "the line is not a JSON object", where, 'write {"item": …, "coder": …} per line'
+            )
         )
         return {}
     record = {}

@@ -171,8 +171,10 @@ def _layout(view: _View, told: Mapping[str, Any]) -> tuple[Layout, str]:
         if guess_counts(others):
             return (
                 "counts",
-                f'no item repeats in "{one.header}", and the other columns hold counts that add '
-                "up alike in each row",
+                (
+                    f'no item repeats in "{one.header}", and the other columns hold counts that '
+                    "add up alike in each row"
+                ),
             )
         columns, _ = by_coder_columns(others)
         if len(columns) >= 2:
@@ -214,12 +216,13 @@ def _one_file_per_coder(view: _View, item: Sketch | None) -> bool:
 
 
 def _item_across_files(view: _View) -> Sketch | None:
-    """A column that is unique within each file while the files share most of its texts."""
+    """A column that hardly repeats within a file while the files share most of its texts."""
     candidates = named_like(view.columns, ITEM_WORDS) + view.columns
     for one in candidates:
-        pair = one.codes * np.int64(view.n_files) + view.file
-        once = np.unique(pair).size == pair.size
-        if once and one.n_distinct * 2 <= len(one.codes) * 1.5 and not one.prose:
+        # A coder who entered an item twice does not make it another column.
+        once = _repeats(one.codes, view.file) <= 0.05 * len(one.codes)
+        shared = one.n_distinct <= 0.75 * len(one.codes)
+        if once and shared and not one.prose:
             return one
     return None
 
@@ -278,15 +281,13 @@ def _long(view: _View, told: Mapping[str, Any]) -> Roles:
     if remark is not None:
         roles.remark = remark.header
         taken.append(remark)
-        why = "" if told["remark"] is not None else "of its header and its free texts"
+        why = "" if told["remark"] is not None else "of its header and its few or free texts"
         roles.lines.append(("coders' remarks", f'column "{remark.header}"', why, "--remark"))
     _fill_long_variables(roles, view, told, taken, item, coder)
     return roles
 
 
-def _long_item(
-    view: _View, told: Mapping[str, Any], coder: Sketch | None, by_file: bool
-) -> Sketch:
+def _long_item(view: _View, told: Mapping[str, Any], coder: Sketch | None, by_file: bool) -> Sketch:
     if told["item"] is not None:
         return view.find(told["item"], "the items")
     if by_file:
@@ -354,7 +355,8 @@ def _remark(
         return view.find(told["remark"], "the remarks")
     labels = {fold(name) for name in told["labels"]}
     for one in named_like(view.without(*taken), REMARK_WORDS):
-        free = one.n_filled == 0 or one.prose or one.n_distinct > 0.5 * one.n_filled
+        sparse = one.n_filled < 0.3 * len(one.codes)
+        free = sparse or one.prose or one.n_distinct > 0.5 * one.n_filled
         if free and fold(one.header) not in labels and not one.constant_within(item.codes):
             return one
     return None
@@ -408,7 +410,9 @@ def _fill_by_coder(roles: Roles, view: _View, item: Sketch, told: Mapping[str, A
         matched = matching_headers(others, pattern, view.place)
     elif told["labels"]:
         pattern, because = None, ""
-        matched = [("", one.header, one) for one in (view.find(n, "a coder") for n in told["labels"])]
+        matched = [
+            ("", one.header, one) for one in (view.find(n, "a coder") for n in told["labels"])
+        ]
     else:
         columns, pattern = by_coder_columns(others)
         because = "they share their labels"
@@ -458,5 +462,3 @@ def _fill_counts(roles: Roles, view: _View, item: Sketch, told: Mapping[str, Any
     headers = tuple(one.header for one in columns)
     roles.coder_columns = headers
     roles.lines.append(("labels", f"the columns {listed(headers)}", because, "--labels"))
-
-

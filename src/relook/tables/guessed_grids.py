@@ -13,7 +13,9 @@ from relook.tables.numbers import parse_number
 from relook.tables.sketches import CODER_WORDS, Sketch, dated
 
 _SEPARATORS = ("_", " ", "-", ".", ":", "/")
-_CODER_NAME = re.compile(r"([a-z]{1,2}|coder|rater|annotator|judge|reviewer|expert|model)?\s?\d+|[a-z]")
+_CODER_NAME = re.compile(
+    r"([a-z]{1,2}|coder|rater|annotator|judge|reviewer|expert|model)?\s?\d+|[a-z]"
+)
 
 
 def by_coder_columns(columns: Sequence[Sketch]) -> tuple[list[Sketch], str | None]:
@@ -123,7 +125,7 @@ def _splits(header: str, separator: str, last: bool) -> tuple[str, str] | None:
 
 
 def _grid(columns: Sequence[Sketch]) -> tuple[list[Sketch], str] | None:
-    """Headers that cross two lists of names, each with two names or more, nearly all cells filled."""
+    """Headers that cross two lists of two names or more, nearly all crossings being there."""
     for separator in _SEPARATORS:
         for last in (True, False):
             parts = {}
@@ -148,7 +150,7 @@ def _grid(columns: Sequence[Sketch]) -> tuple[list[Sketch], str] | None:
 def _variable_stands_first(
     parts: dict[tuple[str, str], Sketch], firsts: Sequence[str], seconds: Sequence[str]
 ) -> bool:
-    """Columns of one variable share their labels; where both sides do, a name like c1 is a coder's."""
+    """Columns of one variable share labels; where both sides do, a name like c1 is a coder's."""
     by_first = _cohesion([[o for (f, _), o in parts.items() if f == name] for name in firsts])
     by_second = _cohesion([[o for (_, s), o in parts.items() if s == name] for name in seconds])
     if abs(by_first - by_second) > 0.1:

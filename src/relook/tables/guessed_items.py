@@ -166,7 +166,5 @@ def _to_group(columns: Sequence[Sketch]) -> tuple[str, ...]:
     return tuple(
         one.header
         for one in columns
-        if 2 <= one.n_distinct <= 12
-        and one.n_filled >= 5 * one.n_distinct
-        and not one.prose
+        if 2 <= one.n_distinct <= 12 and one.n_filled >= 5 * one.n_distinct and not one.prose
     )[:_MOST_SHOWN]

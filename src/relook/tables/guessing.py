@@ -10,8 +10,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 
-
-
 from relook.errors import RelookError, listed
 from relook.tables.guessed_columns import Roles, guess_roles
 from relook.tables.guessed_items import guess_items
@@ -196,7 +194,7 @@ def guess(
         item=roles.item,
         coder=roles.coder,
         coder_from="file" if roles.coder_from_file else "column",
-        coders=roles.coder_columns,
+        coders=() if roles.layout == "counts" else roles.coder_columns,
         columns=roles.pattern,
         missing=missing,
         duplicates=told.duplicates or "error",
@@ -272,6 +270,8 @@ def _variables(
         level, because = _level(columns, roles)
         difference = told.difference.get(name, told.difference.get(""))
         declared = told.declared.get(name, told.declared.get(""))
+        if roles.layout == "counts" and declared is None:
+            declared = roles.coder_columns
         options = told.options.get(name, told.options.get("", {}))
         if difference is not None:
             because = ""
@@ -302,14 +302,18 @@ def _level(columns: Sequence[Sketch], roles: Roles) -> tuple[str, str]:
     if columns and all(one.whole for one in columns if one.n_filled):
         return (
             "nominal",
-            "whole numbers may be codes, ranks or amounts, and the weakest reading is taken; use "
-            "ordinal if they are ranks, interval if equal steps mean equal differences",
+            (
+                "whole numbers may be codes, ranks or amounts, and the weakest reading is taken; "
+                "use ordinal if they are ranks, interval if equal steps mean equal differences"
+            ),
         )
     if columns and all(one.numeric for one in columns if one.n_filled):
         return (
             "ordinal",
-            "numbers with decimals have an order, and no more is taken for granted; use interval "
-            "if equal steps mean equal differences",
+            (
+                "numbers with decimals have an order, and no more is taken for granted; use "
+                "interval if equal steps mean equal differences"
+            ),
         )
     texts = [str(text) for one in columns for text in one.texts[one.filled]]
     for separator in (";", "|", ","):
@@ -318,8 +322,10 @@ def _level(columns: Sequence[Sketch], roles: Roles) -> tuple[str, str]:
         if len(several) * 3 > len(parts) > 0 and _recur(several):
             return (
                 "nominal",
-                f'the labels are words; some cells hold several joined by "{separator}": use '
-                f"jaccard:{separator} if they are sets of labels",
+                (
+                    f'the labels are words; some cells hold several joined by "{separator}": use '
+                    f"jaccard:{separator} if they are sets of labels"
+                ),
             )
     return "nominal", "the labels are words; use ordinal and declare their order if they have one"
 
@@ -328,5 +334,3 @@ def _recur(several: Sequence[Sequence[str]]) -> bool:
     """Whether the pieces of joined labels occur again and again, as labels do."""
     pieces = [fold(piece) for part in several for piece in part]
     return len(set(pieces)) * 2 <= len(pieces)
-
-

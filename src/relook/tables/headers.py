@@ -10,7 +10,7 @@ from relook.errors import Place, RelookError, listed, nearest
 
 
 def fold(header: str) -> str:
-    """Return what two spellings of a header share: case, spaces, ``_``, ``-`` and forms set aside."""
+    """Return a header with case, spaces, ``_``, ``-`` and Unicode forms set aside."""
     plain = unicodedata.normalize("NFKC", header).casefold()
     return re.sub(r"[\s_\-]+", " ", plain).strip()
 
@@ -51,9 +51,9 @@ def find_column(header: Sequence[str], name: str, where: Place, role: str = "") 
     if len(exact) == 1:
         return exact[0]
     if len(exact) > 1:
-        letters = " and ".join(letter(at) for at in exact)
+        found = " and ".join(f'"{header[at]}" ({letter(at)})' for at in exact)
         raise RelookError(
-            f'the header "{name}" stands over {len(exact)} columns, {letters}',
+            f'the header "{name}" fits {len(exact)} columns, {found}',
             where=where,
             mend="rename all but one of them",
         )

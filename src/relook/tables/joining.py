@@ -130,9 +130,9 @@ def join_texts(parts: Sequence[Coded]) -> tuple[list[IntArray], Texts]:
     codes, texts = pd.factorize(together)
     ends = np.cumsum([len(part.texts) for part in parts])
     lookups = np.split(codes, ends[:-1])
-    return [
-        lookup[part.codes] for lookup, part in zip(lookups, parts, strict=True)
-    ], np.asarray(texts, dtype=object)
+    return [lookup[part.codes] for lookup, part in zip(lookups, parts, strict=True)], np.asarray(
+        texts, dtype=object
+    )
 
 
 def order_by_item_and_coder(item: IntArray, coder: IntArray, n_coders: int) -> IntArray:

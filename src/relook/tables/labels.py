@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from functools import partial
 from pathlib import Path, PurePosixPath
 
 import numpy as np
@@ -12,6 +13,7 @@ from relook.core.differences import Values
 from relook.core.exact import IntArray
 from relook.core.labels import CodedLabels
 from relook.errors import Place, Problem, RelookError, listed, nearest
+from relook.tables.code_book import with_difference_table
 from relook.tables.coding import Coding, Context, code_variable
 from relook.tables.findings import Findings
 from relook.tables.joining import Flat, Joined, join
@@ -149,7 +151,10 @@ def survey_labels(
     joined, left_out = _leave_out(joined, source, findings)
     context = Context(tables, joined.items, joined.coders, source.duplicates, findings)
     found: dict[str, VariableLabels] = {}
-    for variable in variables:
+    for declared in variables:
+        variable = findings.attempt(partial(with_difference_table, declared, root))
+        if variable is None:
+            continue
         flat = joined.flats[variable.name]
         coding = code_variable(variable, flat, context)
         if coding is None:

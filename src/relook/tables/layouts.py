@@ -105,7 +105,8 @@ def take_apart(
     used = {item, *(part.column for part in parts)}
     missing = set(source.missing)
     for fault in table.faults:
-        if fault.column in used and fault.text not in missing:
+        # A formula without a stored value reads as empty, which must not pass for a missing label.
+        if fault.column in used and (not fault.text or fault.text not in missing):
             findings.add(
                 fault.message,
                 table.at(fault.row, fault.column),
@@ -164,15 +165,16 @@ def _long(
         given &= ~blank_coder
         remarks = None if remark_at is None else table.texts(remark_at)
         parts.append(
-            _part(variable.name, column, items, coders, labels, table.rows, remarks, given, n_missing)
+            _part(
+                variable.name, column, items, coders, labels, table.rows, remarks, given, n_missing
+            )
         )
-    for at in np.flatnonzero(lacking)[: findings.room()].tolist():
-        findings.add(
-            "the row has a label but no coder",
-            table.at(int(table.rows[at]), table.find(source.coder or "")),
-            "fill in who gave it, or clear the label",
-        )
-    findings.count(max(0, int(lacking.sum()) - findings.room()) if not findings.room() else 0)
+    findings.add_at(
+        table.rows[lacking].tolist(),
+        "the row has a label but no coder",
+        lambda row: table.at(row, table.find(source.coder or "")),
+        "fill in who gave it, or clear the label",
+    )
     return parts
 
 
@@ -266,7 +268,7 @@ def _columns_by_pattern(
     other: str,
     findings: Findings,
 ) -> list[tuple[str, str, int]]:
-    """Match headers to a pattern such as ``{variable}_{coder}``, the longest variable name first."""
+    """Match headers to a pattern such as ``{variable}_{coder}``, longest variable name first."""
     if pattern.count("{variable}") != 1 or pattern.count(f"{{{other}}}") != 1:
         raise RelookError(
             f'the pattern "{pattern}" must hold {{variable}} and {{{other}}} once each',
@@ -334,9 +336,7 @@ def _counts(
         each = np.repeat(np.arange(table.n_rows), often)
         labels = Coded(np.zeros(each.size, dtype=np.int64), np.array([label], dtype=object))
         item_codes = Coded(items.codes[each], items.texts)
-        parts.append(
-            Part(variable, column, item_codes, None, labels, table.rows[each], None, 0)
-        )
+        parts.append(Part(variable, column, item_codes, None, labels, table.rows[each], None, 0))
     return parts
 
 
@@ -409,12 +409,12 @@ def _report_blank_items(
         return
     labelled = [part.rows[blank_texts(part.items.texts)[part.items.codes]] for part in parts]
     rows = np.unique(np.concatenate(labelled)) if labelled else np.zeros(0, dtype=np.int64)
-    for row in rows[: findings.room()].tolist():
-        findings.add(
-            "the row has a label but no item",
-            table.at(row, item),
-            "fill in which item it belongs to, or delete the row",
-        )
+    findings.add_at(
+        rows.tolist(),
+        "the row has a label but no item",
+        lambda row: table.at(row, item),
+        "fill in which item it belongs to, or delete the row",
+    )
 
 
 def _without_blank(part: Part) -> Part:

@@ -36,7 +36,7 @@ def has_decimal_comma(text: str) -> bool:
 
 
 def number_text(variants: list[str]) -> str:
-    """Return the plainest of several spellings of one number: the shortest, then the first by code."""
+    """Return the plainest spelling of one number: the shortest, then the first by code point."""
     return min((text.strip() for text in variants), key=lambda text: (len(text), text))
 
 

@@ -24,7 +24,8 @@ from relook.tables.formats import CellFault, read_json_lines, read_parquet, read
 from relook.tables.headers import find_column
 
 Texts = npt.NDArray[np.object_]
-_BOOKS = {".xlsx", ".xlsm", ".ods", ".xls", ".xlsb", ".fods"}
+#: What workbooks begin with: a zip archive, or the container of old and of encrypted ones.
+_BOOKS = (b"PK", b"\xd0\xcf\x11\xe0")
 _JSON_LINES = {".jsonl", ".ndjson"}
 #: What a file begins with when it is surely no table, and what it is then called.
 _NO_TABLES = {
@@ -151,8 +152,9 @@ def table_from_bytes(
     ending = Path(file).suffix.casefold()
     if not data.strip():
         raise RelookError("the file is empty", where=Place(file), mend="give a table with a header")
-    title, faults = None, ()
-    if data.startswith(b"PK") or ending in _BOOKS or data.startswith(b"\xd0\xcf\x11\xe0"):
+    title: str | None = None
+    faults: tuple[CellFault, ...] = ()
+    if data.startswith((b"PK", b"\xd0\xcf\x11\xe0")) or ending in _BOOKS:
         from relook.cells.opening import open_book
 
         book = open_book(data, file)
@@ -276,7 +278,8 @@ def find_files(patterns: Sequence[str | Path], root: Path) -> tuple[Path, ...]:
         if path.is_file() or not glob.has_magic(given):
             found[Path(given)] = None
             continue
-        matches = sorted(glob.glob(given, root_dir=root, recursive=True))
+        # pathlib's own glob takes no absolute pattern and no root with wildcards in its name.
+        matches = sorted(glob.glob(given, root_dir=root, recursive=True))  # noqa: PTH207
         files = [
             match
             for match in matches

@@ -36,6 +36,8 @@ class Variable:
         Table with the columns label, meaning, example.
     options : mapping of str to object
         What the difference function needs besides (period, ends, separator, table).
+    decimal : {".", ","}
+        The decimal mark of labels that are numbers.
     """
 
     name: str
@@ -46,6 +48,7 @@ class Variable:
     tolerance: Fraction = Fraction(0)
     code_book: Path | None = None
     options: Mapping[str, object] = field(default_factory=dict)
+    decimal: str = "."
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -18,19 +18,115 @@ MISSING_MARKS = ("", "NA", "N/A", "n/a", "#N/A", "NaN", "nan", "NULL", "null", "
 
 #: Headers by which people name these columns, folded; a header counts if one of its words does.
 ITEM_WORDS = frozenset(
-    "item items id key document doc case unit text clip recording post article answer response "
-    "remark message sentence segment image file record number no nr question respondent".split()
+    (
+        "item",
+        "items",
+        "id",
+        "key",
+        "document",
+        "doc",
+        "case",
+        "unit",
+        "text",
+        "clip",
+        "recording",
+        "post",
+        "article",
+        "answer",
+        "response",
+        "remark",
+        "message",
+        "sentence",
+        "segment",
+        "image",
+        "file",
+        "record",
+        "number",
+        "no",
+        "nr",
+        "question",
+        "respondent",
+    )
 )
 CODER_WORDS = frozenset(
-    "coder coders rater annotator worker judge reviewer expert model labeller labeler user by who "
-    "person initials listener observer reader marker assessor".split()
+    (
+        "coder",
+        "coders",
+        "rater",
+        "annotator",
+        "worker",
+        "judge",
+        "reviewer",
+        "expert",
+        "model",
+        "labeller",
+        "labeler",
+        "user",
+        "by",
+        "who",
+        "person",
+        "initials",
+        "listener",
+        "observer",
+        "reader",
+        "marker",
+        "assessor",
+    )
 )
 LABEL_WORDS = frozenset(
-    "label labels code category rating value score topic class tag stance grade judgement judgment "
-    "verdict answer choice decision species call heard sentiment severity".split()
+    (
+        "label",
+        "labels",
+        "code",
+        "category",
+        "rating",
+        "value",
+        "score",
+        "topic",
+        "class",
+        "tag",
+        "stance",
+        "grade",
+        "judgement",
+        "judgment",
+        "verdict",
+        "answer",
+        "choice",
+        "decision",
+        "species",
+        "call",
+        "heard",
+        "sentiment",
+        "severity",
+    )
 )
-REMARK_WORDS = frozenset("remark remarks comment comments note notes rationale why".split())
-GROUP_WORDS = frozenset("source month year route channel site group batch topic region type".split())
+REMARK_WORDS = frozenset(
+    (
+        "remark",
+        "remarks",
+        "comment",
+        "comments",
+        "note",
+        "notes",
+        "rationale",
+        "why",
+    )
+)
+GROUP_WORDS = frozenset(
+    (
+        "source",
+        "month",
+        "year",
+        "route",
+        "channel",
+        "site",
+        "group",
+        "batch",
+        "topic",
+        "region",
+        "type",
+    )
+)
 _DATE = re.compile(r"\s*(\d{4}-\d{1,2}-\d{1,2}|\d{1,2}[./]\d{1,2}[./]\d{2,4}|\d{1,2}:\d{2})")
 
 

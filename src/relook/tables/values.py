@@ -2,20 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Literal
 
 import numpy as np
 
-from relook.core.differences import DIFFERENCE_FUNCTIONS, Values
+from relook.core.differences import DifferenceFunction, Values, difference_function
 from relook.core.exact import IntArray
 from relook.errors import RelookError, listed, nearest
 from relook.tables.numbers import has_decimal_comma, natural_key, number_text, parse_number
 from relook.tables.schema import Variable
 
 Kind = Literal["words", "ordered", "numbers", "sets"]
+#: Functions whose labels are sets, the same whatever the order in which they are written.
 _SETS = ("jaccard", "masi")
 
 
@@ -48,24 +49,10 @@ class CodedValues:
     bad: dict[int, BadLabel]
 
 
-def kind_of(variable: Variable) -> Kind:
-    """Return what the labels of a variable are: words, ordered words, numbers or sets of words.
-
-    Raises
-    ------
-    RelookError
-        There is no such difference function.
-    """
-    if variable.difference in _SETS:
+def kind_of(function: DifferenceFunction) -> Kind:
+    """Return what the labels of a function are: words, ordered words, numbers or sets of words."""
+    if function.name in _SETS:
         return "sets"
-    function = DIFFERENCE_FUNCTIONS.get(variable.difference)
-    if function is None:
-        close = nearest(variable.difference, DIFFERENCE_FUNCTIONS)
-        raise RelookError(
-            f'"{variable.difference}" is not a difference function; there are '
-            f"{listed(DIFFERENCE_FUNCTIONS)}",
-            mend=f'did you mean "{close}"?' if close else "use one of these",
-        )
     if function.needs == "number":
         return "numbers"
     return "ordered" if function.needs == "order" else "words"
@@ -89,32 +76,24 @@ def code_values(variable: Variable, texts: Sequence[str]) -> CodedValues:
     Raises
     ------
     RelookError
-        A declaration that cannot be: an unknown difference function, a label declared twice, a
-        declared label that is no number where numbers are needed.
+        A declaration that cannot be: an unknown difference function or a wrong option, a label
+        declared twice, a declared label that is no number where numbers are needed.
     """
-    kind = kind_of(variable)
-    if kind == "numbers":
-        return _numbers(variable, texts)
-    if kind == "sets":
-        return _sets(variable, texts)
+    function = difference_function(variable.difference, variable.options)
+    kind = kind_of(function)
     if variable.labels is not None:
-        return _declared(variable, texts, variable.labels)
-    if kind == "ordered":
-        return _numeric_order(variable, texts)
-    order = sorted(range(len(texts)), key=lambda at: natural_key(texts[at]))
-    codes = np.empty(len(texts), dtype=np.int64)
-    codes[order] = np.arange(len(texts))
-    return CodedValues(tuple(texts[at] for at in order), Values(len(texts)), codes, {})
-
-
-def _declared(variable: Variable, texts: Sequence[str], labels: tuple[str, ...]) -> CodedValues:
-    _check_declared(variable, labels)
-    code = {label: at for at, label in enumerate(labels)}
-    codes = np.array([code.get(text, -1) for text in texts], dtype=np.int64)
-    bad = {
-        at: undeclared(text, labels) for at, text in enumerate(texts) if text not in code
-    }
-    return CodedValues(labels, Values(len(labels)), codes, bad)
+        _check_declared(variable, variable.labels)
+    if kind == "numbers":
+        coded = _numbers(variable, texts)
+    elif kind == "sets":
+        coded = _sets(variable, texts)
+    elif variable.labels is not None:
+        coded = _declared(texts, variable.labels)
+    elif kind == "ordered":
+        coded = _numeric_order(variable, texts)
+    else:
+        coded = _in_order(texts)
+    return _checked(function, texts, coded)
 
 
 def undeclared(text: str, labels: Sequence[str]) -> BadLabel:
@@ -142,25 +121,58 @@ def _check_declared(variable: Variable, labels: tuple[str, ...]) -> None:
         seen.add(label)
 
 
+def _checked(function: DifferenceFunction, texts: Sequence[str], coded: CodedValues) -> CodedValues:
+    """Part the values that the function cannot take from the others."""
+    # Declared labels that nobody used are no fault of the table's.
+    used = set(coded.code_of_text.tolist())
+    faults = {code: why for code, why in function.check(coded.values) if code in used}
+    if not faults:
+        return coded
+    bad = dict(coded.bad)
+    codes = coded.code_of_text.copy()
+    for at, code in enumerate(coded.code_of_text.tolist()):
+        if code in faults:
+            bad[at] = BadLabel(
+                f'"{texts[at]}" {faults[code]}',
+                f"correct the cell, or change the settings of {function.name} differences",
+            )
+            codes[at] = -1
+    return CodedValues(coded.texts, coded.values, codes, bad)
+
+
+def _in_order(texts: Sequence[str]) -> CodedValues:
+    order = sorted(range(len(texts)), key=lambda at: natural_key(texts[at]))
+    codes = np.empty(len(texts), dtype=np.int64)
+    codes[order] = np.arange(len(texts))
+    labels = tuple(texts[at] for at in order)
+    return CodedValues(labels, Values.from_texts(labels), codes, {})
+
+
+def _declared(texts: Sequence[str], labels: tuple[str, ...]) -> CodedValues:
+    code = {label: at for at, label in enumerate(labels)}
+    codes = np.array([code.get(text, -1) for text in texts], dtype=np.int64)
+    bad = {at: undeclared(text, labels) for at, text in enumerate(texts) if text not in code}
+    return CodedValues(labels, Values.from_texts(labels), codes, bad)
+
+
 def _numeric_order(variable: Variable, texts: Sequence[str]) -> CodedValues:
     """Ordinal labels without a declared order: only numbers order themselves."""
-    numbers = [parse_number(text) for text in texts]
+    numbers = [parse_number(text, variable.decimal) for text in texts]
     words = [text for text, number in zip(texts, numbers, strict=True) if number is None]
     if not words:
-        return _by_number(texts, [n for n in numbers if n is not None], words_only=True)
+        return _by_number(texts, [n for n in numbers if n is not None], as_numbers=False)
     example = ", ".join(f'"{text}"' for text in sorted(texts, key=natural_key)[:6])
+    more = ", …]" if len(texts) > 6 else "]"
     message = BadLabel(
         f'the order of "{words[0]}" is not known: ordinal labels that are words must be declared',
-        f'list the labels of "{variable.name}" from lowest to highest: labels = [{example}'
-        + (", …]" if len(texts) > 6 else "]"),
+        f'list the labels of "{variable.name}" from lowest to highest: labels = [{example}{more}',
     )
-    first = texts.index(words[0])
     codes = np.full(len(texts), -1, dtype=np.int64)
-    return CodedValues((), Values(0), codes, {first: message})
+    return CodedValues((), Values.from_texts(()), codes, {texts.index(words[0]): message})
 
 
 def _by_number(
-    texts: Sequence[str], numbers: Sequence[Fraction], *, words_only: bool = False
+    texts: Sequence[str], numbers: Sequence[Fraction], *, as_numbers: bool
 ) -> CodedValues:
     """Equal numbers are one value, however they are written."""
     variants: dict[Fraction, list[str]] = {}
@@ -170,32 +182,32 @@ def _by_number(
     code = {number: at for at, number in enumerate(order)}
     codes = np.array([code[number] for number in numbers], dtype=np.int64)
     labels = tuple(number_text(variants[number]) for number in order)
-    values = Values(len(order)) if words_only else Values.from_numbers(order)
+    values = Values.from_numbers(order) if as_numbers else Values.from_texts(labels)
     return CodedValues(labels, values, codes, {})
 
 
 def _numbers(variable: Variable, texts: Sequence[str]) -> CodedValues:
-    decimal = str(variable.options.get("decimal", "."))
-    fits = _limits(variable, decimal)
+    declared = _declared_numbers(variable)
     numbers: list[Fraction] = []
     good: list[int] = []
     bad: dict[int, BadLabel] = {}
     for at, text in enumerate(texts):
-        number = parse_number(text, decimal)
-        fault = _not_a_number(text, variable, decimal) if number is None else fits(number, text)
-        if fault is not None:
-            bad[at] = fault
-        elif number is not None:
+        number = parse_number(text, variable.decimal)
+        if number is None:
+            bad[at] = _not_a_number(text, variable)
+        elif declared is not None and number not in declared:
+            bad[at] = undeclared(text, list(declared.values()))
+        else:
             numbers.append(number)
             good.append(at)
-    found = _by_number([texts[at] for at in good], numbers)
+    found = _by_number([texts[at] for at in good], numbers, as_numbers=True)
     codes = np.full(len(texts), -1, dtype=np.int64)
     codes[good] = found.code_of_text
     return CodedValues(found.texts, found.values, codes, bad)
 
 
-def _not_a_number(text: str, variable: Variable, decimal: str) -> BadLabel:
-    if decimal == "." and has_decimal_comma(text):
+def _not_a_number(text: str, variable: Variable) -> BadLabel:
+    if variable.decimal == "." and has_decimal_comma(text):
         return BadLabel(
             f'"{text}" is not a number: it has a decimal comma',
             f'write "{text.strip().replace(",", ".")}", or set decimal = "," for "{variable.name}"',
@@ -206,52 +218,26 @@ def _not_a_number(text: str, variable: Variable, decimal: str) -> BadLabel:
     )
 
 
-def _limits(variable: Variable, decimal: str) -> Callable[[Fraction, str], BadLabel | None]:
-    """What a number must keep to: declared labels, 0 or more for ratio, the ends for polar."""
-    declared: dict[Fraction, str] | None = None
-    if variable.labels is not None:
-        _check_declared(variable, variable.labels)
-        declared = {}
-        for label in variable.labels:
-            number = parse_number(label, decimal)
-            if number is None:
-                raise RelookError(
-                    f'the declared label "{label}" of the variable "{variable.name}" is not a '
-                    f"number, as {variable.difference} differences need",
-                    mend='declare numbers, or use difference = "ordinal"',
-                )
-            declared[number] = label
-    ends = variable.options.get("ends")
-    low, high = (Fraction(str(e)) for e in ends) if isinstance(ends, list | tuple) else (None, None)
-
-    def fits(number: Fraction, text: str) -> BadLabel | None:
-        if declared is not None and number not in declared:
-            return undeclared(text, list(declared.values()))
-        if variable.difference == "ratio" and number < 0:
-            return BadLabel(
-                f'"{text}" is below 0, and ratio differences need numbers of 0 or more',
-                'correct the cell, or use difference = "interval"',
-            )
-        if low is not None and high is not None and not low <= number <= high:
-            return BadLabel(
-                f'"{text}" lies outside the ends {_plain(low)} and {_plain(high)}',
-                "correct the cell, or widen the ends",
-            )
+def _declared_numbers(variable: Variable) -> dict[Fraction, str] | None:
+    if variable.labels is None:
         return None
-
-    return fits
-
-
-def _plain(number: Fraction) -> str:
-    return str(number.numerator) if number.denominator == 1 else str(float(number))
+    declared: dict[Fraction, str] = {}
+    for label in variable.labels:
+        number = parse_number(label, variable.decimal)
+        if number is None:
+            raise RelookError(
+                f'the declared label "{label}" of the variable "{variable.name}" is not a number, '
+                f"as {variable.difference} differences need",
+                mend='declare numbers, or use difference = "ordinal"',
+            )
+        declared[number] = label
+    return declared
 
 
 def _sets(variable: Variable, texts: Sequence[str]) -> CodedValues:
     """Sets are the same whatever the order in which their labels were written."""
-    separator = str(variable.options.get("separator", ";"))
+    separator = str(variable.options["separator"])
     declared = variable.labels
-    if declared is not None:
-        _check_declared(variable, declared)
     place = {label: at for at, label in enumerate(declared or ())}
     canonical: list[str | None] = []
     bad: dict[int, BadLabel] = {}
@@ -266,7 +252,5 @@ def _sets(variable: Variable, texts: Sequence[str]) -> CodedValues:
         canonical.append(separator.join(labels))
     order = sorted({text for text in canonical if text is not None})
     code = {text: at for at, text in enumerate(order)}
-    codes = np.array(
-        [-1 if text is None else code[text] for text in canonical], dtype=np.int64
-    )
-    return CodedValues(tuple(order), Values(len(order)), codes, bad)
+    codes = np.array([-1 if text is None else code[text] for text in canonical], dtype=np.int64)
+    return CodedValues(tuple(order), Values.from_texts(order), codes, bad)

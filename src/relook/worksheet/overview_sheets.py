@@ -9,6 +9,7 @@ from openpyxl import Workbook
 from openpyxl.formatting.rule import ColorScale, FormatObject, Rule
 from openpyxl.styles.colors import Color
 from openpyxl.utils import get_column_letter
+from openpyxl.worksheet.pagebreak import Break
 from openpyxl.worksheet.worksheet import Worksheet as OpenpyxlSheet
 
 from relook.cells.writing import put_text
@@ -302,6 +303,7 @@ def write_prospect(book: Workbook, looks: Looks, overview: Overview) -> None:
             low=3,
             least=min((end for line in lines for end in line[2:] if end is not None), default=0.0),
         )
+        sheet.row_breaks.append(Break(id=max(last + 1, top + 23)))
         top = max(last + 2, top + 24)  # the chart is some twenty rows high
     note = (
         "Were every item settled as its consensus label; at the cautious end ties go to the tied "

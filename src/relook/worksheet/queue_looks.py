@@ -110,11 +110,12 @@ class RowStyles:
                     colour=palette.INK if main else palette.GREY,
                     down="top" if case.repeats or case.long else "center",
                     underline=case.link,
+                    indent=int(case.index != self._main),
                 )
             case "variable":
                 several = len(self._variables) > 1
                 colour = palette.INK if several else palette.GREY
-                return replace(base, size=9.0, bold=several, colour=colour)
+                return replace(base, size=9.0, bold=several, colour=colour, indent=1)
             case "label" | "coder" | "remark":
                 return replace(base, fill=case.fill, left="thin", indent=case.role == "label")
         return self._field_look(case, replace(base, fill=palette.FIELD, left="thin"))

@@ -141,7 +141,7 @@ def _how_to_decide(variables: Sequence[SheetVariable]) -> list[str]:
         only = "" if len(choices) == len(variables) else f" ({_names(choices)})"
         steps.append(
             f"Put your label into the column “decision”{only}: open its list with Alt+Down, or "
-            "type the label. Any label of the list may be right, also one that is not shown in the row."
+            "type the label. Any label of the list may be right, shown in the row or not."
         )
     for bounds in dict.fromkeys((v.low, v.high) for v in numbers):
         asked = [v for v in numbers if (v.low, v.high) == bounds]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from openpyxl.packaging.custom import CustomPropertyList, StringProperty
+from openpyxl.packaging.custom import StringProperty
 
 from relook.worksheet.code_book_sheet import write_code_book
 from relook.worksheet.lists_sheet import write_lists
@@ -52,11 +52,11 @@ def write_worksheet(worksheet: Worksheet) -> bytes:
     write_code_book(book, looks, worksheet)
     book.move_sheet(SHEET_LISTS, offset=2)
     book.active = 0
-    properties = CustomPropertyList[StringProperty]()
     for name, value in (
         (PROPERTY_PROJECT, worksheet.project),
         (PROPERTY_WORKSHEET, worksheet.id),
         (PROPERTY_FORMAT, str(FORMAT)),
     ):
+        properties = book.custom_doc_props  # type: ignore[attr-defined]  # missing in the stub
         properties.append(StringProperty(name=name, value=value))
     return packed(book, worksheet.stamp)

@@ -5,13 +5,19 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
+from relook.cli.commands.new import new
+from relook.cli.commands.queue import queue
 from relook.cli.commands.score import score
 from relook.cli.commands.why import why
 
 #: Panel → (name, function, example) in the order of the job.
 COMMANDS: dict[str, list[tuple[str, Callable[..., Any], str]]] = {
     "Look": [
+        ("new", new, "relook new labels.csv items.csv --into my_project"),
         ("score", score, "relook score my_project"),
         ("why", why, "relook why my_project r017"),
+    ],
+    "Round": [
+        ("queue", queue, "relook queue my_project --top 40"),
     ],
 }

@@ -1,0 +1,110 @@
+"""`relook queue`: rank, select, plan and write a round of worksheets."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from relook.cli.options import (
+    DebugOption,
+    DifferenceOption,
+    DryRunOption,
+    ForceOption,
+    HoursOption,
+    JsonOption,
+    QuietOption,
+    RankByOption,
+    SecondsOption,
+    SeedOption,
+    ShareOption,
+    TargetArgument,
+    TopOption,
+)
+from relook.cli.running import running
+
+
+def queue(
+    target: TargetArgument = Path(),
+    top: TopOption = None,
+    share: ShareOption = None,
+    hours: HoursOption = None,
+    seconds_per_item: SecondsOption = None,
+    rank_by: RankByOption = None,
+    audit: Annotated[
+        int | None,
+        typer.Option("--audit", min=0, metavar="N", help="Audit items to draw at random."),
+    ] = None,
+    adjudicator: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--adjudicator",
+            metavar="NAME",
+            help="Who decides, for a bare table; may be repeated.",
+        ),
+    ] = None,
+    difference: DifferenceOption = None,
+    following: Annotated[
+        bool,
+        typer.Option("--next", help="Plan the next round although nothing of the last is back."),
+    ] = False,
+    again: Annotated[
+        bool, typer.Option("--again", help="Send items again that are settled or still out.")
+    ] = False,
+    splits: Annotated[
+        bool,
+        typer.Option("--splits", help="Send only what adjudicators differ on to somebody else."),
+    ] = False,
+    include_single: Annotated[
+        bool, typer.Option("--include-single", help="Send items with a single label too.")
+    ] = False,
+    seed: SeedOption = None,
+    dry_run: DryRunOption = False,
+    force: ForceOption = False,
+    as_json: JsonOption = False,
+    quiet: QuietOption = False,
+    debug: DebugOption = False,
+) -> None:
+    """Rank the items, select those most worth a second look, and write worksheets for them."""
+    with running(quiet=quiet, debug=debug) as terminal:
+        from relook.cli.screens.queue import queue_screen
+        from relook.cli.targets import project_to_write
+        from relook.project.ordering import DEFAULT_SEED, settings_of_queue
+        from relook.project.queue_run import queue_object, run_queue
+        from relook.project.queueing import QueueRequest
+
+        project, is_new = project_to_write(
+            target, terminal, difference=difference, adjudicators=adjudicator, dry_run=dry_run
+        )
+        overrides = {
+            "rank_by": rank_by,
+            "top": top,
+            "share": share,
+            "hours": hours,
+            "seconds_per_item": seconds_per_item,
+            "include_single": include_single or None,
+        }
+        request = QueueRequest(
+            queue=settings_of_queue(project.settings.queue, overrides),
+            seed=DEFAULT_SEED if seed is None else seed,
+            audit=audit,
+            following=following,
+            again=again,
+            splits_only=splits,
+        )
+        done = run_queue(
+            project,
+            request,
+            stamp=terminal.now().isoformat(timespec="seconds"),
+            new_project=is_new,
+            dry_run=dry_run,
+            force=force,
+        )
+        for line in done.loaded.said:
+            terminal.say(line)
+        terminal.problems(done.loaded.problems)
+        if as_json:
+            terminal.json(queue_object(done))
+        else:
+            terminal.data(queue_screen(done))

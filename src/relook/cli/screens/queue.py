@@ -1,0 +1,99 @@
+"""The screen of `relook queue`: what was selected, what it may bring, and what to do next."""
+
+from __future__ import annotations
+
+from rich.console import RenderableType
+from rich.text import Text
+
+from relook.cli.screens.layout import (
+    coefficient,
+    count,
+    counted,
+    heading,
+    note,
+    percent,
+    small_table,
+    stacked,
+)
+from relook.core.proportions import clean_bound
+from relook.project.queue_run import QueueRun
+from relook.project.score_tables import defined
+
+
+def queue_screen(run: QueueRun) -> RenderableType:
+    """Lay out a round that was written, or that would be."""
+    planned = run.planned
+    ordering = planned.ordering
+    verb = "would write" if run.dry_run else "wrote"
+    parts: list[RenderableType] = [
+        heading(f"round {planned.number}"),
+        note(f"Queued: {ordering.selection.sentence(ordering.ranking)}."),
+    ]
+    seconds = [item for item in planned.items if item.kind in ("split", "recheck")]
+    if seconds:
+        parts.append(
+            note(f"Second opinions: {counted(len(seconds), 'row')} that rulings differ on.")
+        )
+    if planned.n_audit_items:
+        parts.append(
+            note(
+                f"Audit: {counted(planned.n_audit_items, 'item')} drawn at random from those that "
+                "would be released without a decision. If all are upheld, the share that is not "
+                f"lies below {clean_bound(planned.n_audit_items):.0%} (95%, one-sided)."
+            )
+        )
+    if ordering.selection.n_items:
+        parts += [Text(""), _variables(run)]
+        parts.append(
+            note(
+                "Agreement in the corrected data if these items were settled to their consensus "
+                "labels. It is no reliability; no decision should aim at it."
+            )
+        )
+    parts += [Text(""), heading(f"{verb}"), _files(run)]
+    parts += [note(f"{said}.") for said in planned.plan.said]
+    if planned.plan.unplanned:
+        items = ", ".join(held.item for held in planned.plan.unplanned[:12])
+        parts.append(note(f"Left for you: {items}."))
+    if not run.dry_run:
+        project = run.loaded.project
+        shown = project.shown_root
+        parts += [
+            Text(""),
+            note(
+                f"Send the files of {project.relative(project.worksheets_folder(planned.number))} "
+                "and nothing else: relook.toml and the overview name coders.\n"
+                f"When they are back, put them into "
+                f"{project.relative(project.returned_folder(planned.number))} and run: "
+                f"relook collect {shown}"
+            ),
+        ]
+    return stacked(*parts)
+
+
+def _variables(run: QueueRun) -> RenderableType:
+    selection = run.planned.ordering.selection
+    rows = []
+    for position, scored in enumerate(run.score.variables):
+        low, high = defined(scored.prospect.low[-1]), defined(scored.prospect.high[-1])
+        rows.append(
+            (
+                scored.name,
+                count(int(selection.rows_per_variable[position])),
+                percent(defined(selection.share_per_variable[position])),
+                coefficient(scored.agreement.alpha),
+                f"{coefficient(low)} to {coefficient(high)}",
+            )
+        )
+    headers = ("variable", "rows", "of D_o", "alpha now", "agreement if settled")
+    return small_table(headers, rows, numbers=(1, 2, 3))
+
+
+def _files(run: QueueRun) -> RenderableType:
+    planned, project = run.planned, run.loaded.project
+    rows = [
+        (held.file, sheet.adjudicator.name, counted(held.n_rows, "row"))
+        for held, sheet in zip(run.issued.round.worksheets, planned.plan.worksheets, strict=True)
+    ]
+    rows.append((project.relative(run.overview), "for you alone", ""))
+    return small_table(("file", "for", ""), rows)
