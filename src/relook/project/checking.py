@@ -196,13 +196,13 @@ def _with(report: RowReport, reason: str, mend: str, *, column: str | None = Non
 
 def _reject_unknown(returned: ReturnedWorksheet, row: ReturnedRow, result: Checked) -> None:
     found = shown(row.decision)
+    if not found:
+        return  # whatever stands in the column of row codes there, nothing was decided in the row
     report = _report(returned, row, None, found=found)
     if row.key:
         reason = f'"{row.key[:40]}" is no row code of this project'
-    elif found:
-        reason = "the row has a decision but no row code"
     else:
-        return
+        reason = "the row has a decision but no row code"
     mend = "copy the row code from the worksheet that was sent"
     result.rejected.append(_with(report, reason, mend))
 

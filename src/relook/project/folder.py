@@ -49,6 +49,11 @@ class Project:
         return cls(root, load_settings(root / SETTINGS_FILE))
 
     @property
+    def title(self) -> str:
+        """What to call the project where it is given no title: its folder's name in words."""
+        return self.root.name.removesuffix("-relook").replace("_", " ")
+
+    @property
     def shown_root(self) -> str:
         """The folder as the user would type it from where they stand."""
         try:

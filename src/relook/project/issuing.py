@@ -96,8 +96,12 @@ def issue_round(
                 n_rows=len(held.rows),
             )
         )
-        for row, evidence in zip(held.rows, evidence_cells(worksheet), strict=True):
-            rows.append(_round_row(loaded, held, row, evidence, ranks, contributions))
+        rows += [
+            _round_row(loaded, held, row, shown.competing, evidence, ranks, contributions)
+            for row, shown, evidence in zip(
+                held.rows, worksheet.rows, evidence_cells(worksheet), strict=True
+            )
+        ]
     issued = Round(
         number=planned.number,
         made=stamp,
@@ -184,7 +188,7 @@ def _worksheet(
     return Worksheet(
         id=held.id,
         project=loaded.project.settings.project,
-        title=settings.title or loaded.project.root.name.replace("_", " "),
+        title=settings.title or loaded.project.title,
         round=planned.number,
         adjudicator=held.adjudicator.name,
         variables=tuple(variable for name, variable in variables.items() if name in used),
@@ -255,6 +259,7 @@ def _round_row(
     loaded: Loaded,
     held: PlannedWorksheet,
     row: PlannedRow,
+    competing: tuple[str, ...],
     evidence: dict[str, str],
     ranks: dict[str, int],
     contributions: dict[tuple[str, str], float],
@@ -272,6 +277,7 @@ def _round_row(
         rank=ranks[row.item] if selected else None,
         contribution=contributions.get((row.item, row.variable)),
         labels_digest=labels_digest(labels_of_item(loaded, row.variable, item)),
+        competing=competing,
         evidence=evidence_digests(evidence),
     )
 

@@ -41,7 +41,7 @@ def overview_of(score: Score, planned: PlannedRound, issued: IssuedRound) -> Ove
     settings = score.loaded.project.settings.worksheet
     each = score.variables
     return Overview(
-        title=settings.title or score.loaded.project.root.name.replace("_", " "),
+        title=settings.title or score.loaded.project.title,
         round=planned.number,
         stamp=issued.round.made,
         figures=tuple(_figures(score)),

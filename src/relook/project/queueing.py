@@ -15,15 +15,14 @@ from relook.core.audit import STRATA, allocate, draw_audit, stratify
 from relook.core.decisions import Settlement
 from relook.core.exact import BoolArray, IntArray
 from relook.errors import ExitCode, RelookError
-from relook.project.folder import Project
 from relook.project.loading import Loaded
 from relook.project.ordering import Ordering, item_hashes, order_items
+from relook.project.people import adjudicators_of
 from relook.project.record import Record
 from relook.project.rounds import Round, RoundStratum
 from relook.project.settings import QueueSettings
 from relook.project.sheets import coders_of_item
-from relook.worksheet.keys import adjudicator_id
-from relook.worksheet.plan import Adjudicator, Plan, PlanItem, plan_worksheets
+from relook.worksheet.plan import Plan, PlanItem, plan_worksheets
 
 #: A settlement in one of these states needs nobody's decision any more.
 CLOSED = ("settled", "cannot be coded")
@@ -141,14 +140,6 @@ class History:
         return all(decision.round != last for decision in self.record.decisions)
 
 
-def adjudicators_of(project: Project, secret: bytes) -> tuple[Adjudicator, ...]:
-    """Return the adjudicators of relook.toml with the ids they are recorded under."""
-    return tuple(
-        Adjudicator(id=adjudicator_id(secret, name), name=name, coder=coder)
-        for name, coder in project.settings.worksheet.adjudicators.items()
-    )
-
-
 def plan_round(
     loaded: Loaded, request: QueueRequest, history: History, secret: bytes
 ) -> PlannedRound:
@@ -176,7 +167,8 @@ def plan_round(
         )
     left_out = _left_out(loaded, history, again=request.again)
     n_audit = _n_audit(request, history)
-    overlap = settings.worksheet.overlap
+    # One person cannot be two, so one adjudicator alone makes no overlap.
+    overlap = settings.worksheet.overlap if len(settings.worksheet.adjudicators) > 1 else 0.0
     ordering = order_items(
         loaded,
         request.queue,

@@ -35,6 +35,8 @@ class RoundRow:
         The item's part of D_o on this variable.
     labels_digest : str
         Digest of the item's labels on this variable as they stood.
+    competing : tuple of str
+        The labels that the row shows, in its order; an audit row shows some that nobody gave.
     evidence : mapping of str to str
         Digest of the text of each evidence cell as sent, by its header.
     """
@@ -49,6 +51,7 @@ class RoundRow:
     rank: int | None = None
     contribution: float | None = None
     labels_digest: str = ""
+    competing: tuple[str, ...] = ()
     evidence: Mapping[str, str] = field(default_factory=dict)
 
 
@@ -175,7 +178,10 @@ class Round:
                 variables=tuple(RoundVariable(**entry) for entry in held["variables"]),
                 strata=tuple(RoundStratum(**entry) for entry in held["strata"]),
                 worksheets=tuple(RoundWorksheet(**entry) for entry in held["worksheets"]),
-                rows=tuple(RoundRow(**entry) for entry in held["rows"]),
+                rows=tuple(
+                    RoundRow(**{**entry, "competing": tuple(entry.get("competing", ()))})
+                    for entry in held["rows"]
+                ),
             )
         except (ValueError, TypeError, KeyError) as error:
             raise RelookError(

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Callable, Collection, Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime
 from pathlib import Path
@@ -42,7 +42,7 @@ def collect_rulings(
     *,
     variables: Mapping[str, SheetVariable],
     items: Collection[str],
-    labels_digests: Mapping[tuple[str, str], str] | None = None,
+    labels_digest_of: Callable[[str, str], str] | None = None,
     strict: bool = False,
     reinstate: bool = False,
     dry_run: bool = False,
@@ -60,8 +60,8 @@ def collect_rulings(
         What may be decided, by variable.
     items : collection of str
         The items that the project has.
-    labels_digests : mapping of (item, variable) to str, optional
-        Digest of the labels as they stand.
+    labels_digest_of : callable, optional
+        Returns the digest of an item's labels on a variable as they stand.
     strict, reinstate, dry_run, now
         As for `relook.project.collecting.collect`.
 
@@ -76,7 +76,7 @@ def collect_rulings(
     returned = read_returned(project, path)
     rounds = [each.number for each in read_rounds(project)]
     latest = max(rounds, default=0)
-    reader = _Reader(project, returned, variables, frozenset(items), labels_digests or {}, latest)
+    reader = _Reader(project, returned, variables, frozenset(items), labels_digest_of, latest)
     rulings, rejected = reader.read(open_book(returned.data, returned.name))
     if dry_run:
         return _add(project, rulings, rejected, returned, latest, strict, reinstate, None)
@@ -174,14 +174,14 @@ class _Reader:
         returned: Returned,
         variables: Mapping[str, SheetVariable],
         items: frozenset[str],
-        labels_digests: Mapping[tuple[str, str], str],
+        labels_digest_of: Callable[[str, str], str] | None,
         round_number: int,
     ) -> None:
         self._secret = project.secret()
         self._returned = returned
         self._variables = variables
         self._items = items
-        self._labels_digests = labels_digests
+        self._labels_digest_of = labels_digest_of
         self._round = round_number
 
     def read(self, book: Book) -> tuple[list[_Ruling], list[RowReport]]:
@@ -286,7 +286,9 @@ class _Reader:
             sheet=sheet.title,
             cell=f"{report.column}{report.row}",
             found=reading.found if reading.adjusted else "",
-            labels_digest=self._labels_digests.get((item, variable.name), ""),
+            labels_digest=""
+            if self._labels_digest_of is None
+            else self._labels_digest_of(item, variable.name),
         )
         return _Ruling(entry, report)
 

@@ -159,7 +159,7 @@ def _weigh_row(
         )
     elif new:
         _take(*_fullest(new), past, result)
-    elif not older:
+    elif answered or not older:
         result.unchanged += 1
 
 

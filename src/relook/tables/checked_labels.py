@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+import pandas as pd
 
 from relook.core.differences import difference_function
 from relook.core.exact import IntArray
@@ -183,14 +184,15 @@ def _check_copies(data: LabelData, name: str, findings: Findings) -> None:
     if first.size == 0:
         return
     n_coders = len(data.coders)
-    key, which, met = np.unique(first * n_coders + second, return_inverse=True, return_counts=True)
+    which, key = pd.factorize(first * n_coders + second)
+    met = np.bincount(which, minlength=key.size)
     agreed = np.bincount(which, weights=same, minlength=key.size)
     elsewhere = met.sum() - met
     rate = (agreed.sum() - agreed) / np.maximum(elsewhere, 1)
     # Chance that as many labels agree, were these two like the rest.
     likely = rate**met
     odd = (agreed == met) & (met >= _SHARED_ITEMS) & (elsewhere > 0) & (likely < 1e-3)
-    for at in np.flatnonzero(odd).tolist():
+    for at in sorted(np.flatnonzero(odd).tolist(), key=lambda at: int(key[at])):
         one, other = divmod(int(key[at]), n_coders)
         findings.add(
             f'coders "{data.coders[one]}" and "{data.coders[other]}" gave the same label of '

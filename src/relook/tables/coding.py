@@ -76,9 +76,9 @@ def code_variable(variable: Variable, flat: Flat, context: Context) -> Coding | 
         if not keep.all():
             flat, value = flat.take(keep), value[keep]
     labels = CodedLabels(
-        flat.item.astype(np.int64),
+        flat.item.astype(np.int64, copy=False),
         value,
-        None if flat.coder is None else flat.coder.astype(np.int64),
+        None if flat.coder is None else flat.coder.astype(np.int64, copy=False),
         n_items=len(context.items),
         n_values=len(coded.texts),
         n_coders=len(context.coders),

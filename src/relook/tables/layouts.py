@@ -94,14 +94,14 @@ def take_apart(
         _find_others(table, source, variables, findings)
         return FileParts(np.empty(0, dtype=object), ())
     items = Coded(*table.coded(item))
-    blank = blank_texts(items.texts)[items.codes]
+    blank_items = blank_texts(items.texts)
+    blank = blank_items[items.codes]
     if source.layout == "long":
         parts = _long(table, source, variables, items, blank, findings)
     elif source.layout == "by-coder":
         parts = _by_coder(table, source, variables, items, blank, findings)
     else:
         parts = _counts(table, source, variables, items, blank, findings)
-    _report_blank_items(table, item, blank, parts, findings)
     used = {item, *(part.column for part in parts)}
     missing = set(source.missing)
     for fault in table.faults:
@@ -112,8 +112,10 @@ def take_apart(
                 table.at(fault.row, fault.column),
                 "put the value itself into the cell, or clear it",
             )
-    kept = ~blank_texts(items.texts)
-    return FileParts(items.texts[kept], tuple(_without_blank(part) for part in parts))
+    if not blank_items.any():
+        return FileParts(items.texts, tuple(parts))
+    _report_blank_items(table, item, parts, findings)
+    return FileParts(items.texts[~blank_items], tuple(_without_blank(part) for part in parts))
 
 
 def blank_texts(texts: Texts) -> BoolArray:
@@ -402,11 +404,7 @@ def _part(
     return Part(variable, column, items, coders, labels, rows, remarks, n_missing)
 
 
-def _report_blank_items(
-    table: Table, item: int, blank: BoolArray, parts: Sequence[Part], findings: Findings
-) -> None:
-    if not blank.any():
-        return
+def _report_blank_items(table: Table, item: int, parts: Sequence[Part], findings: Findings) -> None:
     labelled = [part.rows[blank_texts(part.items.texts)[part.items.codes]] for part in parts]
     rows = np.unique(np.concatenate(labelled)) if labelled else np.zeros(0, dtype=np.int64)
     findings.add_at(

@@ -154,7 +154,7 @@ def table_from_bytes(
         raise RelookError("the file is empty", where=Place(file), mend="give a table with a header")
     title: str | None = None
     faults: tuple[CellFault, ...] = ()
-    if data.startswith((b"PK", b"\xd0\xcf\x11\xe0")) or ending in _BOOKS:
+    if data.startswith(_BOOKS):
         from relook.cells.opening import open_book
 
         book = open_book(data, file)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 import unicodedata
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -22,6 +23,7 @@ _LOOK_ALIKES = str.maketrans(
 )
 _INVISIBLE = re.compile("[\u200b-\u200f\u2060\ufeff\u00ad]")
 _SPACES = re.compile(r"\s+")
+_PLAIN_SPACES = " \t\n\r\v\f\x1c\x1d\x1e"
 _JOINS = re.compile(r"[\s_\-]+")
 
 #: What a twin may differ by, from the least to the most; each step undoes one kind of difference.
@@ -76,7 +78,7 @@ def near_twins(counts: Mapping[str, int]) -> list[Twins]:
         Each text beside the most used of its family, ordered by it.
     """
     families: dict[str, list[str]] = {}
-    for text in counts:
+    for text in _worth_comparing(list(counts)):
         families.setdefault(skeleton(text), []).append(text)
     found = []
     for family in families.values():
@@ -84,6 +86,26 @@ def near_twins(counts: Mapping[str, int]) -> list[Twins]:
             kept, *others = sorted(family, key=lambda text: (-counts[text], text))
             found += [Twins(kept, other, how_they_differ(kept, other)) for other in others]
     return sorted(found, key=lambda twins: (twins.kept, twins.other))
+
+
+def _worth_comparing(texts: list[str]) -> list[str]:
+    """Return the texts that share a coarse key with another, so that a million ids cost little.
+
+    The key comes from the same steps as the skeleton, over all texts in one string, without any
+    space or join; texts of one skeleton always share it.
+    """
+    if any("\x1f" in text for text in texts):
+        return texts
+    whole = _INVISIBLE.sub("", "\x1f".join(texts).translate(_LOOK_ALIKES))
+    whole = unicodedata.normalize("NFKC", whole).casefold().translate(_LOOK_ALIKES)
+    spaces = _PLAIN_SPACES if whole.isascii() else {one for one in set(whole) if one.isspace()}
+    for mark in (*spaces, "-", "_", "."):
+        whole = whole if mark == "\x1f" else whole.replace(mark, "")
+    keys = whole.split("\x1f")
+    often = Counter(keys)
+    if len(often) == len(keys):
+        return []
+    return [text for text, key in zip(texts, keys, strict=True) if often[key] > 1]
 
 
 def how_they_differ(first: str, second: str) -> str:

@@ -124,7 +124,7 @@ def columns_of(worksheet: Worksheet) -> tuple[Column, ...]:
         wanted.append(Column(HEADER_REMARKS, "remark", 32))
     wanted += [
         Column(
-            HEADER_TICK.format(label=label), "tick", max(7.0, min(12.0, len(label) + 2.0)), index
+            HEADER_TICK.format(label=label), "tick", max(9.0, min(14.0, len(label) + 6.0)), index
         )
         for index, label in enumerate(tick_labels(worksheet.variables))
     ]
@@ -167,7 +167,9 @@ def label_texts(row: SheetRow) -> tuple[str, ...]:
         )
     else:
         texts = row.competing
-    return texts if len(texts) <= MOST_LABEL_COLUMNS else ("\n".join(texts),)
+    if len(texts) <= MOST_LABEL_COLUMNS:
+        return texts
+    return ("\n".join(f"· {text}" for text in texts),)
 
 
 def cell_text(row: SheetRow, column: Column, coders: Sequence[str]) -> str:
@@ -254,6 +256,7 @@ def _fitting(texts: Iterable[str], least: float, most: float) -> float:
 #: Advance widths of Calibri, and of Carlito, which has the same ones, in 1/2048 em; a column's
 #: width is counted in digits, of 1038.
 _DIGIT = 1038
+_INSET = 0.9  # what a cell keeps free at its sides, in digits
 _ADVANCES = {
     462: " ijl'`|.,:;", 625: "ftrI()[]{}-/\\!\"", 850: "szcJLF?_", 930: "kvxygES*^T<>=+~#$",
     1076: "abdehnopquBKPXYCRVZ0123456789", 1290: "AGHNOUD&", 1470: "wQ", 1700: "m%@MW",
@@ -266,7 +269,8 @@ _WIDTHS = {
 def display_width(text: str) -> float:
     """Return the width of a line in digits of its own font size.
 
-    Characters beyond ASCII count one, East Asian wide ones and pictographs two, marks none.
+    Characters beyond ASCII come from fonts unknown and are taken for rather wide: East Asian ones
+    and pictographs count two, marks none.
     """
     return sum(map(_character_width, text))
 
@@ -283,7 +287,7 @@ def _other_width(character: str) -> float:
         return 0.0
     if unicodedata.east_asian_width(character) in "WF":
         return 2.0
-    return 1.25 if character.isupper() else 1.05
+    return 1.3 if character.isupper() else 1.2
 
 
 def wrapped_lines(text: str, width: float) -> int:
@@ -292,7 +296,7 @@ def wrapped_lines(text: str, width: float) -> int:
     Spreadsheet programs do not tell, so words are laid out greedily by the widths of their
     characters. A word longer than a line is broken.
     """
-    limit = max(1.0, width)
+    limit = max(1.0, width - _INSET)
     space = _WIDTHS[" "]
     lines = 0
     for paragraph in text.split("\n"):

@@ -79,7 +79,7 @@ class RowStyles:
             link=role == "shown" and is_web_link(text),
             quoted=text[:1] in ("=", "+", "-", "@"),
             repeats=repeats,
-            long=role == "shown" and len(text) > _LONG,
+            long=role == "shown" and len(text) > (4 * column.width if repeats else _LONG),
         )
         known = self._known.get(case)
         if known is None:
@@ -108,7 +108,7 @@ class RowStyles:
                     base,
                     size=layout.SMALL if case.repeats else layout.TEXT if main else 9.0,
                     colour=palette.INK if main else palette.GREY,
-                    down="top" if case.repeats or case.long else "center",
+                    down="top" if case.long else "center",
                     underline=case.link,
                     indent=int(case.index != self._main),
                 )

@@ -79,7 +79,8 @@ def _write_rows(
             measured = (text, column.width, size)
             height = known.get(measured)
             if height is None:
-                height = known[measured] = layout.text_height(text, column.width, size)
+                # The indents of some columns take a little of the width.
+                height = known[measured] = layout.text_height(text, column.width - 1, size)
             if repeats and column.role == "shown":
                 height = min(height, layout.MOST_REPEAT_LINES * layout.line_height(size))
             tallest = max(tallest, height)

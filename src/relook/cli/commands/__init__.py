@@ -5,9 +5,11 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
+from relook.cli.commands.collect import collect
 from relook.cli.commands.new import new
 from relook.cli.commands.queue import queue
 from relook.cli.commands.score import score
+from relook.cli.commands.status import status
 from relook.cli.commands.why import why
 
 #: Panel → (name, function, example) in the order of the job.
@@ -19,5 +21,7 @@ COMMANDS: dict[str, list[tuple[str, Callable[..., Any], str]]] = {
     ],
     "Round": [
         ("queue", queue, "relook queue my_project --top 40"),
+        ("collect", collect, "relook collect my_project"),
+        ("status", status, "relook status my_project"),
     ],
 }

@@ -68,6 +68,8 @@ def queue(
 ) -> None:
     """Rank the items, select those most worth a second look, and write worksheets for them."""
     with running(quiet=quiet, debug=debug) as terminal:
+        from dataclasses import replace
+
         from relook.cli.screens.queue import queue_screen
         from relook.cli.targets import project_to_write
         from relook.project.ordering import DEFAULT_SEED, settings_of_queue
@@ -85,8 +87,11 @@ def queue(
             "seconds_per_item": seconds_per_item,
             "include_single": include_single or None,
         }
+        wanted = settings_of_queue(project.settings.queue, overrides)
+        if is_new:  # what is asked of a bare table is what its project keeps
+            project = replace(project, settings=replace(project.settings, queue=wanted))
         request = QueueRequest(
-            queue=settings_of_queue(project.settings.queue, overrides),
+            queue=wanted,
             seed=DEFAULT_SEED if seed is None else seed,
             audit=audit,
             following=following,
