@@ -34,9 +34,7 @@ CRUST = SheetVariable(
     ordered=True,
 )
 CRUMB = SheetVariable(name="crumb", entry="number", low=0, high=100)
-THEMES = SheetVariable(
-    name="themes", entry="set", labels=("food", "staff", "noise"), separator=";"
-)
+THEMES = SheetVariable(name="themes", entry="set", labels=("food", "staff", "noise"), separator=";")
 REASONS = ("coder slip", "instructions unclear")
 
 

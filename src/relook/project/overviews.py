@@ -146,7 +146,9 @@ def _figures(score: Score) -> list[Figure]:
 
 def _notes(score: Score, planned: PlannedRound) -> list[str]:
     ordering = planned.ordering
-    notes = [f"Queued: {ordering.selection.sentence(ordering.ranking)}."]
+    notes = []
+    if ordering.selection.n_items:
+        notes.append(f"Queued: {ordering.selection.sentence(ordering.ranking)}.")
     if planned.n_audit_items:
         drawn = ", ".join(
             f"{held.variable} {held.stratum} {held.n_drawn} of {held.n_items}"

@@ -22,4 +22,4 @@ def names_by_id(project: Project) -> dict[str, str]:
         return {}
     secret = project.secret()
     names = {held.id: held.name for held in adjudicators_of(project, secret)}
-    return {**names, LEAD: "the lead"}
+    return {**names, LEAD: "panel"}

@@ -10,10 +10,11 @@ from typing import Any
 from relook.core.proportions import clean_bound
 from relook.project.folder import Project
 from relook.project.guessed import folder_for, write_settings
+from relook.project.history import History
 from relook.project.issuing import OVERVIEW_FILE, IssuedRound, issue_round, write_round
 from relook.project.loading import Loaded, load
 from relook.project.overviews import overview_of
-from relook.project.queueing import History, PlannedRound, QueueRequest, plan_round
+from relook.project.queueing import PlannedRound, QueueRequest, plan_round
 from relook.project.record import read_record
 from relook.project.rounds import read_rounds
 from relook.project.score_tables import defined

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 from relook.core.decisions import Settlement
 from relook.errors import Problem
 from relook.project.folder import Project
+from relook.project.history import History
 from relook.project.loading import Loaded, labels_digest, labels_of_item, load
-from relook.project.queueing import History
 from relook.project.record import inspect_record
 from relook.project.rounds import Round, read_rounds
 from relook.project.settlements import settlements

@@ -184,7 +184,7 @@ def _check_copies(data: LabelData, name: str, findings: Findings) -> None:
     if first.size == 0:
         return
     n_coders = len(data.coders)
-    which, key = pd.factorize(first * n_coders + second)
+    which, key = pd.factorize(first.astype(np.int64) * n_coders + second)
     met = np.bincount(which, minlength=key.size)
     agreed = np.bincount(which, weights=same, minlength=key.size)
     elsewhere = met.sum() - met
@@ -211,9 +211,10 @@ def _meetings(labels: CodedLabels) -> tuple[IntArray, IntArray, IntArray]:
     n_pairs = int((per_item * (per_item - 1) // 2).sum())
     if coder is None or n_pairs == 0 or n_pairs > _MOST_PAIRS:
         return none, none, none
-    last = np.cumsum(per_item)[labels.item_index]
+    last = np.cumsum(per_item)[labels.item_index].astype(np.int32)
+    coder = coder.astype(np.int32)
     firsts, seconds, sames = [], [], []
-    at = np.arange(labels.n_labels)
+    at = np.arange(labels.n_labels, dtype=np.int32)
     for step in range(1, int(per_item.max())):
         at = at[at + step < last[at]]
         firsts.append(np.minimum(coder[at], coder[at + step]))
@@ -222,7 +223,7 @@ def _meetings(labels: CodedLabels) -> tuple[IntArray, IntArray, IntArray]:
     return (
         np.concatenate(firsts),
         np.concatenate(seconds),
-        np.concatenate(sames).astype(np.int64),
+        np.concatenate(sames).astype(np.int8),
     )
 
 

@@ -122,10 +122,10 @@ def join_texts(parts: Sequence[Coded]) -> tuple[list[IntArray], Texts]:
     texts : object array
         The distinct texts of all parts that are in use or, for a part without codes, listed.
     """
-    if len(parts) == 1:
-        return [parts[0].codes], parts[0].texts
     if not parts:
         return [], np.empty(0, dtype=object)
+    if all(part.texts is parts[0].texts for part in parts):
+        return [part.codes for part in parts], parts[0].texts
     together = np.concatenate([part.texts for part in parts])
     codes, texts = pd.factorize(together)
     ends = np.cumsum([len(part.texts) for part in parts])

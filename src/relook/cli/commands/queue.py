@@ -56,6 +56,15 @@ def queue(
         bool,
         typer.Option("--splits", help="Send only what adjudicators differ on to somebody else."),
     ] = False,
+    reissue: Annotated[
+        str | None,
+        typer.Option(
+            "--reissue", metavar="ADJUDICATOR", help="Send this person's open rows once more."
+        ),
+    ] = None,
+    to: Annotated[
+        str | None, typer.Option("--to", metavar="OTHER", help="With --reissue: to somebody else.")
+    ] = None,
     include_single: Annotated[
         bool, typer.Option("--include-single", help="Send items with a single label too.")
     ] = False,
@@ -97,6 +106,8 @@ def queue(
             following=following,
             again=again,
             splits_only=splits,
+            reissue=reissue,
+            reissue_to=to,
         )
         done = run_queue(
             project,

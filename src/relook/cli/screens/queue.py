@@ -25,10 +25,9 @@ def queue_screen(run: QueueRun) -> RenderableType:
     planned = run.planned
     ordering = planned.ordering
     verb = "would write" if run.dry_run else "wrote"
-    parts: list[RenderableType] = [
-        heading(f"round {planned.number}"),
-        note(f"Queued: {ordering.selection.sentence(ordering.ranking)}."),
-    ]
+    parts: list[RenderableType] = [heading(f"round {planned.number}")]
+    if ordering.selection.n_items:
+        parts.append(note(f"Queued: {ordering.selection.sentence(ordering.ranking)}."))
     seconds = [item for item in planned.items if item.kind in ("split", "recheck")]
     if seconds:
         parts.append(
@@ -46,7 +45,7 @@ def queue_screen(run: QueueRun) -> RenderableType:
         parts += [Text(""), _variables(run)]
         parts.append(
             note(
-                "Agreement in the corrected data if these items were settled to their consensus "
+                "Agreement in the corrected data if these items alone took their consensus "
                 "labels. It is no reliability; no decision should aim at it."
             )
         )
