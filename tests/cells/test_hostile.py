@@ -10,8 +10,8 @@ import zipfile
 
 import pytest
 from openpyxl import Workbook
-from reference.ods_files import MIMETYPE, ods, row, text, zipped
 
+from reference.ods_files import MIMETYPE, ods, row, text, zipped
 from relook.cells.opening import open_book
 from relook.errors import RelookError
 
@@ -72,15 +72,23 @@ FILES = {
     "xml": (b'<?xml version="1.0"?><a/>', "an XML file"),
     "binary": (b"\x00\x01\x02\x03" * 50, "neither a spreadsheet nor a text"),
     "archive": (zipped({"a.txt": "a"}), "zip archive"),
-    "text document": (zipped({"[Content_Types].xml": "<a/>", "word/document.xml": "<a/>"}), "no spreadsheet"),
+    "text document": (
+        zipped({"[Content_Types].xml": "<a/>", "word/document.xml": "<a/>"}),
+        "no spreadsheet",
+    ),
     "xlsb": (zipped({"[Content_Types].xml": "<a/>", "xl/workbook.bin": "a"}), "xlsb"),
-    "ods of another kind": (zipped({"mimetype": MIMETYPE.replace("spreadsheet", "text")}), "no spreadsheet"),
+    "ods of another kind": (
+        zipped({"mimetype": MIMETYPE.replace("spreadsheet", "text")}),
+        "no spreadsheet",
+    ),
     "ods without content": (zipped({"mimetype": MIMETYPE}), "no content"),
     "ods with a password": (ods(row(text("a")), manifest="<encryption-data/>"), "password"),
     "truncated": (workbook()[:-300], "damaged"),
     "half": (workbook()[:2000], "damaged"),
     "strict": (
-        workbook({"xl/workbook.xml": '<workbook xmlns="http://purl.oclc.org/ooxml/spreadsheetml/main"/>'}),
+        workbook(
+            {"xl/workbook.xml": '<workbook xmlns="http://purl.oclc.org/ooxml/spreadsheetml/main"/>'}
+        ),
         "Strict",
     ),
     "no workbook": (zipped({"[Content_Types].xml": "<a/>"}), "no workbook"),
@@ -91,7 +99,9 @@ FILES = {
     "missing text": (workbook(sheet('<row r="1"><c r="A1" t="s"><v>99</v></c></row>')), "damaged"),
     "entities": (workbook({"xl/styles.xml": doctype(f'<styleSheet xmlns="{MAIN}"/>')}), "entities"),
     "entities in the sheet": (
-        workbook({"xl/worksheets/sheet1.xml": doctype(f'<worksheet xmlns="{MAIN}">&e9;</worksheet>')}),
+        workbook(
+            {"xl/worksheets/sheet1.xml": doctype(f'<worksheet xmlns="{MAIN}">&e9;</worksheet>')}
+        ),
         "entities",
     ),
     "entities in ods": (
@@ -102,9 +112,14 @@ FILES = {
         workbook(sheet('<row r="1048576"><c r="XFD1048576"><v>1</v></c></row>')),
         "XFD1048576 lies far",
     ),
-    "far row": (workbook(sheet('<row r="1048576"><c r="A1048576"><v>1</v></c></row>')), "empty rows below"),
+    "far row": (
+        workbook(sheet('<row r="1048576"><c r="A1048576"><v>1</v></c></row>')),
+        "empty rows below",
+    ),
     "far right cells": (
-        workbook(sheet("".join(f'<row r="{n}"><c r="EZZ{n}"><v>1</v></c></row>' for n in range(1, 3000)))),
+        workbook(
+            sheet("".join(f'<row r="{n}"><c r="EZZ{n}"><v>1</v></c></row>' for n in range(1, 3000)))
+        ),
         "empty cells",
     ),
     "a very long row": (
@@ -112,7 +127,10 @@ FILES = {
         "lies far beyond",
     ),
     "empty bomb": (workbook(sheet(" " * 30_000_000)), "unfolds into"),
-    "bomb in a part that is not read": (workbook({"xl/media/x.bin": b"\0" * 40_000_000}), "unfolds into"),
+    "bomb in a part that is not read": (
+        workbook({"xl/media/x.bin": b"\0" * 40_000_000}),
+        "unfolds into",
+    ),
     "many parts": (
         zipped({"[Content_Types].xml": "<a/>"} | {f"p{n}": "" for n in range(5000)}),
         "5,001 parts",
@@ -134,7 +152,8 @@ def test_refused_with_a_clear_sentence(name: str) -> None:
 
 
 @pytest.mark.parametrize(
-    "name", ["far corner", "far row", "far right cells", "empty bomb", "entities", "a very long row"]
+    "name",
+    ["far corner", "far row", "far right cells", "empty bomb", "entities", "a very long row"],
 )
 def test_refused_in_little_memory(name: str) -> None:
     """What unfolds is stopped before it fills memory."""

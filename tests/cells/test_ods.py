@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import pytest
-from reference.ods_files import ods, row, text
 
+from reference.ods_files import ods, row, text
 from relook.cells.model import Cell
 from relook.cells.opening import open_book
 from relook.errors import RelookError
@@ -29,7 +29,10 @@ def rows_of(data: bytes) -> list[list[str]]:
             'office:value-type="time" office:time-value="PT03H04M00S"',
             Cell("date", "03:04:00", "hh:mm:ss"),
         ),
-        ('table:formula="of:=TRUE()" office:value-type="float" office:value="1"', Cell("bool", "TRUE")),
+        (
+            'table:formula="of:=TRUE()" office:value-type="float" office:value="1"',
+            Cell("bool", "TRUE"),
+        ),
         (
             'table:formula="of:=1+1" office:value-type="float" office:value="2"',
             Cell("formula", "=1+1", "", "2"),
@@ -49,7 +52,10 @@ def test_kinds(cell: str, expected: Cell) -> None:
 def test_repeats_are_unfolded() -> None:
     """Repeated cells and rows are as many as they say; empty ones at the end are none."""
     data = ods(
-        row(text("a", 'table:number-columns-repeated="2"'), attributes='table:number-rows-repeated="2"')
+        row(
+            text("a", 'table:number-columns-repeated="2"'),
+            attributes='table:number-rows-repeated="2"',
+        )
         + row("<table:table-cell/>", attributes='table:number-rows-repeated="3"')
         + row('<table:table-cell table:number-columns-repeated="2"/>', text("b"))
         + row("<table:table-cell/>", attributes='table:number-rows-repeated="1048000"')
@@ -89,8 +95,12 @@ def test_custom_properties() -> None:
     [
         row(text("a"), attributes='table:number-rows-repeated="1000000"'),
         row(text("a", 'table:number-columns-repeated="16384"')),
-        row("<table:table-cell/>", attributes='table:number-rows-repeated="900000"') + row(text("a")),
-        row(text("a", 'table:number-columns-repeated="4000"'), attributes='table:number-rows-repeated="9000"'),
+        row("<table:table-cell/>", attributes='table:number-rows-repeated="900000"')
+        + row(text("a")),
+        row(
+            text("a", 'table:number-columns-repeated="4000"'),
+            attributes='table:number-rows-repeated="9000"',
+        ),
         row(text("a", 'table:number-columns-repeated="0"')),
         row(text("a", 'table:number-columns-repeated="x"')),
     ],

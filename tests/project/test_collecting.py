@@ -7,6 +7,7 @@ from pathlib import Path
 
 import pytest
 from openpyxl import Workbook
+
 from reference.small_project import (
     NOW,
     SEVERITY,
@@ -16,26 +17,28 @@ from reference.small_project import (
     edited,
     fill,
     give_back,
-    header_row,
     make_project,
     make_worksheet,
     queue_of,
 )
-
 from relook.errors import RelookError
 from relook.project.collected import Collected
 from relook.project.collecting import collect
 from relook.project.folder import Project
 from relook.project.record import read_record
 
-FILLED = {0: "delay", 1: "staff", 2: "price", 3: "cannot be coded", 4: "delay"}  # the sixth is blank
+FILLED = {
+    0: "delay",
+    1: "staff",
+    2: "price",
+    3: "cannot be coded",
+    4: "delay",
+}  # the sixth is blank
 
 
 def labels(project: Project) -> dict[str, str]:
     """Return the latest label, or other ruling, of each item."""
-    return {
-        held.item: held.label or held.ruling for held in read_record(project).decisions
-    }
+    return {held.item: held.label or held.ruling for held in read_record(project).decisions}
 
 
 def collect_changed(
@@ -120,7 +123,14 @@ def test_harmless_changes(tmp_path: Path, change: Callable[[Workbook], object] |
 
 @pytest.mark.parametrize(
     ("typed", "label"),
-    [("delay ", "delay"), ("DELAY", "delay"), ("de\u200blay", "delay"), (7, "7"), (7.0, "7"), ("7.0", "7")],
+    [
+        ("delay ", "delay"),
+        ("DELAY", "delay"),
+        ("de\u200blay", "delay"),
+        (7, "7"),
+        (7.0, "7"),
+        ("7.0", "7"),
+    ],
 )
 def test_lenient_matches_are_taken_and_said(tmp_path: Path, typed: object, label: str) -> None:
     """Spaces, case and turned numbers are taken for the label that they can only mean."""
@@ -364,5 +374,7 @@ def test_same_inputs_give_the_same_bytes(tmp_path: Path) -> None:
         project, sent = make_project(tmp_path / name)
         give_back(project, "ada.xlsx", fill(sent["Ada"], FILLED))
         collect(project, None, now=NOW)
-        written.append({file.name: file.read_bytes() for file in project.decisions_folder.iterdir()})
+        written.append(
+            {file.name: file.read_bytes() for file in project.decisions_folder.iterdir()}
+        )
     assert written[0] == written[1]

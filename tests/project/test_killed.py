@@ -11,8 +11,8 @@ import time
 from pathlib import Path
 
 import pytest
-from reference.small_project import NOW, fill, give_back, make_project
 
+from reference.small_project import NOW, fill, give_back, make_project
 from relook.errors import RelookError
 from relook.project.collecting import collect
 from relook.project.folder import Project
@@ -24,6 +24,14 @@ KILLS = 200
 
 def _state(project: Project) -> dict[str, str | None]:
     return {held.item: held.label for held in read_record(project).decisions}
+
+
+def _said_by_collect(project: Project) -> str | None:
+    try:
+        collect(project, None, now=NOW)
+    except RelookError as error:
+        return str(error)
+    return None
 
 
 @pytest.mark.skipif(not hasattr(os, "fork"), reason="needs fork, which Windows has not")
@@ -85,12 +93,11 @@ def test_full_disk_at_every_write(tmp_path: Path, monkeypatch: pytest.MonkeyPatc
             real(handle)
 
         monkeypatch.setattr(os, "fsync", full)
-        try:
-            collect(project, None, now=NOW)
-        except RelookError as error:
+        said = _said_by_collect(project)
+        if said is not None:
             failed += 1
-            assert "No space left" in error.message
-            assert "disk has room" in (error.mend or "")
+            assert "No space left" in said
+            assert "disk has room" in said
             assert not list(root.rglob("*.part"))
         monkeypatch.setattr(os, "fsync", real)
         assert _state(project) in ({}, {"remark 01": "delay"})
@@ -113,4 +120,3 @@ def test_folder_that_cannot_be_written(tmp_path: Path, monkeypatch: pytest.Monke
     assert collect(project, None, dry_run=True, now=NOW).accepted == 1
     monkeypatch.undo()
     assert collect(project, None, now=NOW).accepted == 1
-

@@ -7,11 +7,10 @@ import random
 import zipfile
 from collections import Counter
 
-
 import pytest
 from openpyxl import Workbook
-from reference.small_project import edited, fill, make_project, make_worksheet, queue_of
 
+from reference.small_project import edited, fill, make_project, make_worksheet, queue_of
 from relook.errors import RelookError
 from relook.project.checking import Sent
 from relook.project.collecting import check_returned, sent_rows
@@ -19,7 +18,12 @@ from relook.project.returns import Returned
 from relook.worksheet.write import write_worksheet
 
 DECIDED = {0: "delay", 1: "staff", 2: "price", 4: "delay"}
-PARTS = ("xl/worksheets/sheet2.xml", "xl/workbook.xml", "xl/_rels/workbook.xml.rels", "xl/styles.xml")
+PARTS = (
+    "xl/worksheets/sheet2.xml",
+    "xl/workbook.xml",
+    "xl/_rels/workbook.xml.rels",
+    "xl/styles.xml",
+)
 
 
 @pytest.fixture(scope="module")
@@ -38,9 +42,13 @@ def outcome(data: bytes, sent: Sent) -> tuple[dict[str, str | None], set[str], b
     try:
         checked = check_returned(returned, sent, seen=False).checked
     except RelookError as error:
-        assert error.where is not None
-        assert error.where.file == "a.xlsx"
-        assert error.mend
+        refusal = error
+    else:
+        refusal = None
+    if refusal is not None:
+        assert refusal.where is not None
+        assert refusal.where.file == "a.xlsx"
+        assert refusal.mend
         return {}, set(), True
     taken = {each.sent.row.item: each.reading.label for each in checked.candidates.values()}
     reports = [*checked.rejected, *checked.edited]
@@ -55,14 +63,14 @@ def test_flipped_bytes(filled: bytes, sent: Sent) -> None:
     """A byte changed anywhere in the file: all decisions, or a refusal; checksums see to it."""
     draw = random.Random(1)
     refused = 0
-    for _ in range(900):
+    for _ in range(1000):
         data = bytearray(filled)
         for _ in range(draw.choice((1, 1, 4))):
             data[draw.randrange(len(data))] ^= 1 << draw.randrange(8)
         taken, _, was_refused = outcome(bytes(data), sent)
         refused += was_refused
         assert was_refused or taken == ITEMS
-    assert 0 < refused < 900
+    assert 0 < refused < 1000
 
 
 def test_cut_files(filled: bytes, sent: Sent) -> None:
@@ -78,7 +86,18 @@ def test_mutated_xml(filled: bytes, sent: Sent) -> None:
     draw = random.Random(3)
     source = zipfile.ZipFile(io.BytesIO(filled))
     parts = {name: source.read(name) for name in source.namelist()}
-    tokens = [b"<", b">", b'"', b"&", b"/", b"<c>", b"</row>", b"<row r='9'/>", b"<v>9</v>", b"99999999"]
+    tokens = [
+        b"<",
+        b">",
+        b'"',
+        b"&",
+        b"/",
+        b"<c>",
+        b"</row>",
+        b"<row r='9'/>",
+        b"<v>9</v>",
+        b"99999999",
+    ]
     refused = Counter[bool]()
     for _ in range(700):
         name = draw.choice([part for part in PARTS if part in parts])
@@ -102,13 +121,26 @@ def _zipped(parts: dict[str, bytes]) -> bytes:
     return out.getvalue()
 
 
-JUNK = ("delay", "dely", "", None, 7, 0.5, True, "=A1", "#N/A", "withdraw", "cannot be coded", "x" * 300)
+JUNK = (
+    "delay",
+    "dely",
+    "",
+    None,
+    7,
+    0.5,
+    True,
+    "=A1",
+    "#N/A",
+    "withdraw",
+    "cannot be coded",
+    "x" * 300,
+)
 
 
 def test_edited_cells(filled: bytes, sent: Sent) -> None:
     """Cells of a sheet altered at random: each decision is taken, or its row or cell reported."""
     draw = random.Random(4)
-    for _ in range(240):
+    for _ in range(100):
         cells = [
             (draw.randrange(2, 8), draw.randrange(1, 10), draw.choice(JUNK))
             for _ in range(draw.randrange(1, 4))
@@ -125,5 +157,3 @@ def test_edited_cells(filled: bytes, sent: Sent) -> None:
             item = f"remark {number + 1:02d}"
             if number + 2 not in touched and item not in reported:
                 assert taken[item] == label
-
-

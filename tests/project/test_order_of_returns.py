@@ -6,8 +6,8 @@ from datetime import timedelta
 from pathlib import Path
 
 import pytest
-from reference.small_project import NOW, fill, give_back, make_project, make_worksheet
 
+from reference.small_project import NOW, fill, give_back, make_project, make_worksheet
 from relook.core.decisions import fold
 from relook.project.collecting import collect
 from relook.project.folder import Project

@@ -8,8 +8,8 @@ from datetime import timedelta
 from pathlib import Path
 
 import pytest
-from reference.small_project import NOW, SETTINGS, fill, give_back, make_project, make_worksheet
 
+from reference.small_project import NOW, SETTINGS, fill, give_back, make_project, make_worksheet
 from relook.errors import RelookError
 from relook.project.collecting import collect
 from relook.project.folder import Project
@@ -83,7 +83,7 @@ def test_conflict_copies(project: Project, name: str, said: str) -> None:
 
 def test_foreign_file(project: Project, tmp_path: Path) -> None:
     """A file of another project is named, and so is every other fault at once."""
-    other, sent = make_project(tmp_path / "other", settings=SETTINGS)
+    other, _ = make_project(tmp_path / "other", settings=SETTINGS)
     text = (other.root / "relook.toml").read_text().replace("k7f3ferry", "another")
     (other.root / "relook.toml").write_text(text)
     file = sorted(project.decisions_folder.iterdir())[0]

@@ -11,8 +11,8 @@ from pathlib import Path
 
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from reference.small_project import NOW, fill, make_project, make_worksheet
 
+from reference.small_project import NOW, fill, make_project, make_worksheet
 from relook.core.decisions import fold
 from relook.project.collecting import collect
 from relook.project.folder import Project
@@ -68,7 +68,7 @@ def settled(project: Project) -> dict[str, str | None]:
     return {item: held.label for (item, _), held in folded.items()}
 
 
-STEPS = st.lists(st.tuples(st.tuples(LABELS, LABELS), st.booleans()), min_size=1, max_size=7)
+STEPS = st.lists(st.tuples(st.tuples(LABELS, LABELS), st.booleans()), min_size=1, max_size=6)
 
 
 @settings(max_examples=40, deadline=None)
@@ -89,7 +89,7 @@ def test_sequences_equal_a_plain_replay(steps: list[tuple[tuple[str, str], bool]
         assert settled(project) == replay.settled
 
 
-@settings(max_examples=25, deadline=None)
+@settings(max_examples=15, deadline=None)
 @given(STEPS, STEPS)
 def test_merged_folders_equal_their_union(
     here_steps: list[tuple[tuple[str, str], bool]], there_steps: list[tuple[tuple[str, str], bool]]

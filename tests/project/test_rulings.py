@@ -6,8 +6,8 @@ from collections.abc import Mapping
 from pathlib import Path
 
 import pytest
-from reference.small_project import NOW, SEVERITY, TOPIC, make_project
 
+from reference.small_project import NOW, SEVERITY, TOPIC, make_project
 from relook.core.decisions import LEAD
 from relook.errors import RelookError
 from relook.project.collected import Collected
@@ -92,7 +92,9 @@ def test_again_changes_nothing(project: Project) -> None:
 )
 def test_rejected(project: Project, row: str, column: str, reason: str, mend: str) -> None:
     """Each bad row is listed with its cell, and the others are taken."""
-    result = bring_in(project, f"item,variable,label,by,reason\n{row}\nremark 03,topic,delay,Cleo,\n")
+    result = bring_in(
+        project, f"item,variable,label,by,reason\n{row}\nremark 03,topic,delay,Cleo,\n"
+    )
     (report,) = result.rejected
     assert (report.row, report.column) == (2, column)
     assert reason in report.reason

@@ -14,7 +14,6 @@ import time
 from pathlib import Path
 
 from reference.small_project import NOW
-
 from relook.project.collecting import collect
 from relook.project.folder import Project
 

@@ -7,6 +7,8 @@ from __future__ import annotations
 
 import hashlib
 import io
+import re
+import zipfile
 from collections.abc import Callable, Mapping, Sequence
 from datetime import UTC, datetime
 from pathlib import Path
@@ -201,19 +203,14 @@ def fill(
 
 def _stamped(data: bytes, minutes: int) -> bytes:
     """Set the time of the last save, so that tests do not depend on the clock."""
-    import re
-    import zipfile
-
+    stamp = f"2026-02-02T{minutes // 60:02d}:{minutes % 60:02d}:00Z".encode()
     source = zipfile.ZipFile(io.BytesIO(data))
     out = io.BytesIO()
     with zipfile.ZipFile(out, "w", zipfile.ZIP_DEFLATED) as target:
         for info in source.infolist():
             part = source.read(info.filename)
             if info.filename == "docProps/core.xml":
-                stamp = f"2026-02-02T{minutes // 60:02d}:{minutes % 60:02d}:00Z".encode()
-                part = re.sub(
-                    rb"(<dcterms:modified[^>]*>)[^<]*", lambda hit: hit[1] + stamp, part
-                )
+                part = re.sub(rb"(<dcterms:modified[^>]*>)[^<]*", rb"\g<1>" + stamp, part)
             target.writestr(zipfile.ZipInfo(info.filename), part, zipfile.ZIP_DEFLATED)
     return out.getvalue()
 

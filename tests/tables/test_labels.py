@@ -221,3 +221,12 @@ def test_sorting_is_the_same_by_packed_words_and_by_keys() -> None:
     assert quick.tolist() == np.lexsort((coder, item)).tolist()
     far = order_by_item_and_coder(item, coder, 2**60)
     assert far.tolist() == quick.tolist()
+
+
+def test_blank_items_and_coders_leave_no_trace(tmp_path: Path) -> None:
+    """A row whose label is missing may lack its item or its coder; neither becomes a name."""
+    text = "item,coder,label\na,x,p\n,x,NA\nb,,NA\nb,y,q\n"
+    data = labels_of(tmp_path, {"t.csv": text})
+    assert list(data.items) == ["a", "b"]
+    assert data.coders == ("x", "y")
+    assert triples(data) == {("a", "x", "p"), ("b", "y", "q")}

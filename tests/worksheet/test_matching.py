@@ -51,14 +51,24 @@ SET = SheetVariable(name="themes", entry="set", labels=("food", "noise", "view")
 def test_matched(cell: Cell, labels: tuple[str, ...], label: str, exact: bool) -> None:
     """The one label that a cell means is taken, and told where it was not written exactly so."""
     read = match_decision(cell, choice(*labels))
-    assert (read.state, read.ruling, read.label, not read.adjusted) == ("matched", "label", label, exact)
+    assert (read.state, read.ruling, read.label, not read.adjusted) == (
+        "matched",
+        "label",
+        label,
+        exact,
+    )
 
 
 @pytest.mark.parametrize(
     ("cell", "labels", "reason", "mend"),
     [
         (text("dely"), ("delay", "staff"), 'no label of "topic"', 'change the cell to "delay"'),
-        (text("qqq"), ("delay", "staff"), 'no label of "topic"', 'one of "delay", "staff", "cannot'),
+        (
+            text("qqq"),
+            ("delay", "staff"),
+            'no label of "topic"',
+            'one of "delay", "staff", "cannot',
+        ),
         (text("YES"), ("Yes", "yes"), 'could mean "Yes", "yes"', "exactly"),
         (Cell("number", "1"), ("1.0", "1.00"), "could mean", "exactly"),
         (Cell("date", "2024-01-02"), ("1-2",), "date or time", "format the cell as text"),
@@ -135,7 +145,12 @@ def test_no_number(cell: Cell, reason: str) -> None:
 
 @pytest.mark.parametrize(
     ("written", "label"),
-    [("food", "food"), ("view; food", "food;view"), ("Noise;;VIEW;", "noise;view"), ("food;food", "food")],
+    [
+        ("food", "food"),
+        ("view; food", "food;view"),
+        ("Noise;;VIEW;", "noise;view"),
+        ("food;food", "food"),
+    ],
 )
 def test_set(written: str, label: str) -> None:
     """A set is read element by element and written in the code book's order."""
@@ -159,7 +174,11 @@ def test_ticks() -> None:
     assert match_ticks([], text("food"), SET).label == "food"
 
 
-@given(st.decimals(allow_nan=False, allow_infinity=False, min_value=-(10**9), max_value=10**9, places=4))
+@given(
+    st.decimals(
+        allow_nan=False, allow_infinity=False, min_value=-(10**9), max_value=10**9, places=4
+    )
+)
 def test_decimal_text_keeps_the_number(number: Decimal) -> None:
     """The shortest form of a number reads as the number."""
     assert decimal_of(decimal_text(number)) == number

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import pytest
 from openpyxl import Workbook
+
 from reference.small_project import (
     PROJECT_ID,
     THEMES,
@@ -14,7 +15,6 @@ from reference.small_project import (
     make_worksheet,
     queue_of,
 )
-
 from relook.cells.model import Book, Cell, Sheet
 from relook.cells.opening import open_book
 from relook.errors import RelookError
@@ -197,6 +197,8 @@ def test_no_queue_at_all() -> None:
 
 def test_newer_format() -> None:
     """A worksheet of a newer version is left to that version."""
-    book = Book("a.xlsx", "xlsx", (Sheet("Queue", ((Cell("text", "a"),),)),), {"relook format": "2"})
+    book = Book(
+        "a.xlsx", "xlsx", (Sheet("Queue", ((Cell("text", "a"),),)),), {"relook format": "2"}
+    )
     with pytest.raises(RelookError, match="newer relook"):
         read_worksheet(book)

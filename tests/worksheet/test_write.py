@@ -202,7 +202,7 @@ def test_every_font_is_named() -> None:
 
 def test_rows_are_as_high_as_their_text_but_not_fixed() -> None:
     """The file gives heights without saying that a user set them, so rows grow with notes."""
-    data = write_worksheet(made_worksheet(texts=("short", "a long text " * 40)))
+    data = write_worksheet(made_worksheet(texts=("short", "a long text " * 60)))
     part = parts_of(data)["xl/worksheets/sheet2.xml"]
     assert "customHeight" not in part
     sheet = load_workbook(io.BytesIO(data))["Queue"]

@@ -24,9 +24,9 @@ from relook.project.returns import (
     Run,
     find_returned,
     keep,
-    kept_files,
     log_run,
     read_returned,
+    seen_digests,
 )
 from relook.project.rounds import read_rounds
 from relook.project.weighing import CheckedFile, Weighed, weigh
@@ -78,7 +78,7 @@ def collect(
         )
     with _held(project, dry_run=dry_run):
         record = read_record(project)
-        seen = kept_files(project)
+        seen = seen_digests(project, record.names)
         returned, unreadable = _read_all(project, paths)
         files: list[CheckedFile] = []
         read: list[Returned] = []
@@ -214,28 +214,32 @@ def _write(
         if not file.seen:
             keep(project, number, returned)
     stamp = record.next_stamp(now)
+    name, data = "", b""
+    if weighed.entries:
+        name, data = make_file(
+            project.settings.project,
+            record,
+            stamp,
+            weighed.entries,
+            version=__version__,
+            kind="collect",
+        )
+    logged = tuple(
+        LoggedFile(digest=each.digest, name=each.name, suffix=each.suffix, seen=file.seen)
+        for each, file in zip(read, files, strict=True)
+    )
     run = Run(
         kind="collect",
         stamp=stamp,
         version=__version__,
         follows=record.heads,
         reinstate=reinstate,
-        files=tuple(
-            LoggedFile(digest=each.digest, name=each.name, suffix=each.suffix, seen=file.seen)
-            for each, file in zip(read, files, strict=True)
-        ),
+        files=logged,
+        writes=name,
     )
     log_run(project, max(rounds), run)
-    if not weighed.entries:
+    if not name:
         return None
-    name, data = make_file(
-        project.settings.project,
-        record,
-        stamp,
-        weighed.entries,
-        version=__version__,
-        kind="collect",
-    )
     write_file(project, name, data)
     return project.relative(project.decisions_folder / name)
 

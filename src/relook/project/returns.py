@@ -8,7 +8,7 @@ from __future__ import annotations
 import hashlib
 import json
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any
@@ -69,6 +69,9 @@ class Run:
         The record's newest files when it ran, digest by name.
     reinstate : bool
     files : tuple of LoggedFile
+    writes : str
+        Name of the decisions file that it wrote next; "" where there was nothing to write. Where
+        that file is not there, the run was broken off, or the file was lost.
     entries : tuple of mapping
         Of rulings made elsewhere: what was taken, as written in the record. What worksheets hold is
         read from the kept files instead.
@@ -80,6 +83,7 @@ class Run:
     follows: Mapping[str, str]
     reinstate: bool
     files: tuple[LoggedFile, ...]
+    writes: str
     entries: tuple[Mapping[str, Any], ...] = ()
 
     def to_json(self) -> bytes:
@@ -97,6 +101,7 @@ class Run:
             follows=dict(held["follows"]),
             reinstate=bool(held["reinstate"]),
             files=tuple(LoggedFile(**entry) for entry in held["files"]),
+            writes=str(held["writes"]),
             entries=tuple(dict(entry) for entry in held["entries"]),
         )
 
@@ -206,6 +211,21 @@ def log_run(project: Project, round_number: int, run: Run) -> None:
         write_whole(path, data)
 
 
+def seen_digests(project: Project, names: Collection[str]) -> frozenset[str]:
+    """Return the digests of the files that runs have read to the end.
+
+    Parameters
+    ----------
+    project : Project
+    names : collection of str
+        Names of the decisions files that are there. A run whose file is not among them was broken
+        off before it had written, so what it read still counts as new.
+    """
+    runs, _ = _inspect_runs(project)
+    done = [run for run in runs if not run.writes or run.writes in names]
+    return frozenset(file.digest for run in done for file in run.files)
+
+
 def read_runs(project: Project) -> list[Run]:
     """Return the logged runs, earliest first.
 
@@ -214,6 +234,13 @@ def read_runs(project: Project) -> list[Run]:
     RelookError
         Logs that cannot be read, all of them at once.
     """
+    runs, problems = _inspect_runs(project)
+    if problems:
+        raise RelookError.from_problems(problems)
+    return sorted(runs, key=lambda run: (run.stamp, run.writes))
+
+
+def _inspect_runs(project: Project) -> tuple[list[Run], list[Problem]]:
     runs: list[Run] = []
     problems: list[Problem] = []
     for path in sorted(project.rounds_folder.glob(f"*/returned/{_KEPT}/*.json")):
@@ -227,6 +254,4 @@ def read_runs(project: Project) -> list[Run]:
                     "restore it from a copy of the project folder",
                 )
             )
-    if problems:
-        raise RelookError.from_problems(problems)
-    return sorted(runs, key=lambda run: (run.stamp, len(run.follows), sorted(run.follows)))
+    return runs, problems

@@ -113,6 +113,9 @@ def _add(
         logged = LoggedFile(
             digest=returned.digest, name=returned.name, suffix=returned.suffix, seen=False
         )
+        name, data = make_file(
+            project.settings.project, record, stamp, entries, version=__version__, kind=KIND
+        )
         run = Run(
             kind=KIND,
             stamp=stamp,
@@ -120,12 +123,10 @@ def _add(
             follows=record.heads,
             reinstate=reinstate,
             files=(logged,),
+            writes=name,
             entries=tuple(entry_to_dict(entry) for entry in entries),
         )
         log_run(project, latest, run)
-        name, data = make_file(
-            project.settings.project, record, stamp, entries, version=__version__, kind=KIND
-        )
         write_file(project, name, data)
         record = read_record(project)
         result = replace(result, record_file=project.relative(project.decisions_folder / name))

@@ -3,16 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
-import pandas as pd
 
 from relook.core.exact import IntArray
-from relook.errors import Place, RelookError, listed
+from relook.errors import RelookError, listed
 from relook.tables.guessed_grids import by_coder_columns, guess_counts, matching_headers
-from relook.tables.headers import find_column, fold
+from relook.tables.guessed_roles import Line, Roles, View, view_of
+from relook.tables.headers import fold
 from relook.tables.reading import Table
 from relook.tables.schema import Layout
 from relook.tables.sketches import (
@@ -24,72 +23,6 @@ from relook.tables.sketches import (
     dated,
     named_like,
 )
-
-#: A guess in parts: what, value, because, flag that changes it; "because" is "" where it was told.
-Line = tuple[str, str, str, str]
-
-
-@dataclass(slots=True)
-class Roles:
-    """What each column of the label tables is.
-
-    Attributes
-    ----------
-    layout : {"long", "by-coder", "counts"}
-    item : str
-    coder : str or None
-    coder_from_file : bool
-    coder_columns : tuple of str
-        by-coder with one variable.
-    pattern : str or None
-        by-coder with names that hold variable and coder.
-    remark : str or None
-    variables : list of (name, column or None)
-    columns_of : dict of str to list of Sketch
-        The columns that hold each variable's labels.
-    lines : list of Line
-    """
-
-    layout: Layout
-    item: str
-    coder: str | None = None
-    coder_from_file: bool = False
-    coder_columns: tuple[str, ...] = ()
-    pattern: str | None = None
-    remark: str | None = None
-    variables: list[tuple[str, str | None]] = field(default_factory=list)
-    columns_of: dict[str, list[Sketch]] = field(default_factory=dict)
-    lines: list[Line] = field(default_factory=list)
-
-    def sketches_of(self, variable: str) -> list[Sketch]:
-        """Return the columns that hold a variable's labels."""
-        return self.columns_of.get(variable, [])
-
-    @property
-    def label_sketches(self) -> list[Sketch]:
-        """Every column that holds labels."""
-        return [one for columns in self.columns_of.values() for one in columns]
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _View:
-    """The label tables laid end to end, columns matched by folded header."""
-
-    columns: list[Sketch]
-    file: IntArray
-    place: Place
-    headers: tuple[str, ...]
-
-    def find(self, name: str, role: str) -> Sketch:
-        at = find_column([one.header for one in self.columns], name, self.place, role)
-        return self.columns[at]
-
-    def without(self, *used: Sketch | None) -> list[Sketch]:
-        return [one for one in self.columns if all(one is not other for other in used)]
-
-    @property
-    def n_files(self) -> int:
-        return int(self.file.max(initial=0)) + 1
 
 
 def guess_roles(
@@ -111,7 +44,7 @@ def guess_roles(
     RelookError
         A told column that is not there, or no reading that the table can defend.
     """
-    view = _view(tables, sketches)
+    view = view_of(tables, sketches)
     layout, because = _layout(view, told)
     if layout == "long":
         roles = _long(view, told)
@@ -132,27 +65,7 @@ def guess_roles(
     return roles
 
 
-def _view(tables: Sequence[Table], sketches: Sequence[list[Sketch]]) -> _View:
-    place = tables[0].place
-    if len(tables) == 1:
-        file = np.zeros(tables[0].n_rows, dtype=np.int64)
-        return _View(list(sketches[0]), file, place, tables[0].header)
-    folded = [{fold(one.header): one for one in found} for found in sketches]
-    columns = []
-    for one in sketches[0]:
-        name = fold(one.header)
-        if all(name in found for found in folded):
-            texts = np.concatenate([found[name].texts[found[name].codes] for found in folded])
-            codes, distinct = pd.factorize(texts)
-            counts = np.bincount(codes, minlength=len(distinct))
-            columns.append(
-                Sketch(one.at, one.header, codes, np.asarray(distinct, dtype=object), counts)
-            )
-    file = np.repeat(np.arange(len(tables)), [table.n_rows for table in tables])
-    return _View(columns, file, place, tables[0].header)
-
-
-def _layout(view: _View, told: Mapping[str, Any]) -> tuple[Layout, str]:
+def _layout(view: View, told: Mapping[str, Any]) -> tuple[Layout, str]:
     if told["layout"] is not None:
         return told["layout"], ""
     if told["columns"] is not None:
@@ -204,18 +117,18 @@ def coder_by_header(columns: Sequence[Sketch]) -> Sketch | None:
     return found[0] if len(found) == 1 and not found[0].prose else None
 
 
-def _unique_columns(view: _View) -> list[Sketch]:
+def _unique_columns(view: View) -> list[Sketch]:
     """Columns in which no text repeats: those named like items first, then from left to right."""
     unique = [one for one in view.columns if one.unique and not one.prose]
     named = named_like(unique, ITEM_WORDS)
     return named + [one for one in unique if all(one is not other for other in named)]
 
 
-def _one_file_per_coder(view: _View, item: Sketch | None) -> bool:
+def _one_file_per_coder(view: View, item: Sketch | None) -> bool:
     return (item or _item_across_files(view)) is not None
 
 
-def _item_across_files(view: _View) -> Sketch | None:
+def _item_across_files(view: View) -> Sketch | None:
     """A column that hardly repeats within a file while the files share most of its texts."""
     candidates = named_like(view.columns, ITEM_WORDS) + view.columns
     for one in candidates:
@@ -227,7 +140,7 @@ def _item_across_files(view: _View) -> Sketch | None:
     return None
 
 
-def _item(view: _View, told: Mapping[str, Any], *, unique: bool) -> Sketch:
+def _item(view: View, told: Mapping[str, Any], *, unique: bool) -> Sketch:
     if told["item"] is not None:
         return view.find(told["item"], "the items")
     found = _unique_columns(view) if unique else []
@@ -254,7 +167,7 @@ def _item_line(item: Sketch, told: Mapping[str, Any]) -> Line:
     return ("items", f'column "{item.header}"', because, "--item")
 
 
-def _long(view: _View, told: Mapping[str, Any]) -> Roles:
+def _long(view: View, told: Mapping[str, Any]) -> Roles:
     by_file = told["coder_from"] == "file"
     coder: Sketch | None = None
     because = ""
@@ -287,7 +200,7 @@ def _long(view: _View, told: Mapping[str, Any]) -> Roles:
     return roles
 
 
-def _long_item(view: _View, told: Mapping[str, Any], coder: Sketch | None, by_file: bool) -> Sketch:
+def _long_item(view: View, told: Mapping[str, Any], coder: Sketch | None, by_file: bool) -> Sketch:
     if told["item"] is not None:
         return view.find(told["item"], "the items")
     if by_file:
@@ -327,7 +240,7 @@ def _repeats(first: IntArray, second: IntArray) -> int:
     return int(pair.size - np.unique(pair).size)
 
 
-def _coder_by_shape(view: _View, item: Sketch) -> tuple[Sketch, str]:
+def _coder_by_shape(view: View, item: Sketch) -> tuple[Sketch, str]:
     """The only column that never repeats within an item; several, and nothing can be said."""
     fitting = [
         one
@@ -349,7 +262,7 @@ def _coder_by_shape(view: _View, item: Sketch) -> tuple[Sketch, str]:
 
 
 def _remark(
-    view: _View, told: Mapping[str, Any], taken: Sequence[Sketch | None], item: Sketch
+    view: View, told: Mapping[str, Any], taken: Sequence[Sketch | None], item: Sketch
 ) -> Sketch | None:
     if told["remark"] is not None:
         return view.find(told["remark"], "the remarks")
@@ -364,7 +277,7 @@ def _remark(
 
 def _fill_long_variables(
     roles: Roles,
-    view: _View,
+    view: View,
     told: Mapping[str, Any],
     taken: Sequence[Sketch | None],
     item: Sketch,
@@ -403,7 +316,7 @@ def _may_be_labels(one: Sketch, item: Sketch, coder: Sketch | None) -> bool:
     return coder is None or not one.constant_within(coder.codes) or coder.n_distinct < 2
 
 
-def _fill_by_coder(roles: Roles, view: _View, item: Sketch, told: Mapping[str, Any]) -> None:
+def _fill_by_coder(roles: Roles, view: View, item: Sketch, told: Mapping[str, Any]) -> None:
     others = view.without(item)
     if told["columns"] is not None:
         pattern, because = told["columns"], ""
@@ -443,7 +356,7 @@ def _fill_by_coder(roles: Roles, view: _View, item: Sketch, told: Mapping[str, A
     roles.lines.append(("variables", listed(names), because and "of the same headers", "--columns"))
 
 
-def _fill_counts(roles: Roles, view: _View, item: Sketch, told: Mapping[str, Any]) -> None:
+def _fill_counts(roles: Roles, view: View, item: Sketch, told: Mapping[str, Any]) -> None:
     if told["labels"]:
         columns = [view.find(name, "a label") for name in told["labels"]]
         because = ""

@@ -8,7 +8,7 @@ from pathlib import Path
 import numpy as np
 
 from relook.errors import RelookError
-from relook.tables.guessed_columns import Line, Roles
+from relook.tables.guessed_roles import Line, Roles
 from relook.tables.headers import find_column, fold
 from relook.tables.reading import Table
 from relook.tables.schema import ItemSource

@@ -11,8 +11,9 @@ from dataclasses import dataclass, field
 from pathlib import Path
 
 from relook.errors import RelookError, listed
-from relook.tables.guessed_columns import Roles, guess_roles
+from relook.tables.guessed_columns import guess_roles
 from relook.tables.guessed_items import guess_items
+from relook.tables.guessed_roles import Roles
 from relook.tables.headers import fold
 from relook.tables.reading import Table, find_files, read_table
 from relook.tables.schema import Duplicates, ItemSource, LabelSource, Layout, Variable

@@ -9,11 +9,10 @@ from pathlib import PurePosixPath
 import numpy as np
 
 from relook.core.exact import BoolArray, IntArray
-from relook.errors import RelookError, listed
 from relook.tables.findings import Findings
-from relook.tables.headers import find_column, fold
 from relook.tables.reading import Table, Texts
 from relook.tables.schema import LabelSource, Variable
+from relook.tables.wide_columns import coder_columns, count_columns
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -200,7 +199,12 @@ def _coders_of_rows(
     if column is None:
         return None, none
     coders = Coded(*table.coded(column))
-    return coders, blank_texts(coders.texts)[coders.codes]
+    blank = blank_texts(coders.texts)
+    if not blank.any():
+        return coders, none
+    # A row without a coder is left out or an error, so its code is never looked at.
+    named = Coded(np.maximum(np.cumsum(~blank) - 1, 0)[coders.codes], coders.texts[~blank])
+    return named, blank[coders.codes]
 
 
 def _by_coder(
@@ -212,7 +216,7 @@ def _by_coder(
     findings: Findings,
 ) -> list[Part]:
     parts = []
-    for variable, coder, column in _coder_columns(table, source, variables, findings):
+    for variable, coder, column in coder_columns(table, source, variables, findings):
         labels = Coded(*table.coded(column))
         given = ~_is_missing(labels.texts, source.missing)[labels.codes]
         n_missing = int(np.sum(~given & ~blank_item))
@@ -221,91 +225,6 @@ def _by_coder(
             _part(variable, column, items, coders, labels, table.rows, None, given, n_missing)
         )
     return parts
-
-
-def _coder_columns(
-    table: Table, source: LabelSource, variables: Sequence[Variable], findings: Findings
-) -> list[tuple[str, str, int]]:
-    """Variable, coder and position of each column that holds labels."""
-    item = table.find(source.item)
-    if source.columns is not None:
-        return _columns_by_pattern(table, source.columns, variables, item, "coder", findings)
-    if len(variables) > 1:
-        findings.add(
-            f"{len(variables)} variables need a pattern to tell their columns apart",
-            table.place,
-            'give one: columns = "{variable}_{coder}"',
-        )
-        return []
-    variable = variables[0].name
-    if source.coders:
-        found = []
-        for coder in source.coders:
-            at = _find(table, coder, "a coder", findings)
-            if at is not None:
-                found.append((variable, coder, at))
-        return found
-    others = [at for at, name in enumerate(table.header) if at != item and name.strip()]
-    if not others:
-        findings.add(
-            "there is no column beside the items'",
-            table.place,
-            'a by-coder table has a column per coder; for a row per label use layout = "long"',
-        )
-    names = [table.header[at] for at in others]
-    for name in dict.fromkeys(name for name in names if names.count(name) > 1):
-        _find(table, name, "a coder", findings)
-    return [(variable, table.header[at], at) for at in others]
-
-
-def _find(table: Table, name: str, role: str, findings: Findings) -> int | None:
-    return findings.attempt(lambda: find_column(table.header, name, table.place, role))
-
-
-def _columns_by_pattern(
-    table: Table,
-    pattern: str,
-    variables: Sequence[Variable],
-    item: int,
-    other: str,
-    findings: Findings,
-) -> list[tuple[str, str, int]]:
-    """Match headers to a pattern such as ``{variable}_{coder}``, longest variable name first."""
-    if pattern.count("{variable}") != 1 or pattern.count(f"{{{other}}}") != 1:
-        raise RelookError(
-            f'the pattern "{pattern}" must hold {{variable}} and {{{other}}} once each',
-            mend=f'write for instance columns = "{{variable}}_{{{other}}}"',
-        )
-    found: list[tuple[str, str, int]] = []
-    by_length = sorted((variable.name for variable in variables), key=len, reverse=True)
-    for at, header in enumerate(table.header):
-        if at == item:
-            continue
-        for name in by_length:
-            before, after = pattern.replace("{variable}", name).split(f"{{{other}}}")
-            plain = header.strip()
-            middle = plain[len(before) : len(plain) - len(after)]
-            if middle and plain == before + middle + after:
-                found.append((name, middle, at))
-                break
-    seen: dict[tuple[str, str], int] = {}
-    for name, middle, at in found:
-        if (name, middle) in seen:
-            findings.add(
-                f'the header "{table.header[at]}" stands over two columns',
-                table.place,
-                "rename one of them",
-            )
-        seen[name, middle] = at
-    for variable in variables:
-        if not any(name == variable.name for name, _, _ in found):
-            findings.add(
-                f'no column fits "{pattern}" for the variable "{variable.name}"; the columns are '
-                f"{listed(table.header)}",
-                table.place,
-                "change the pattern, or the variable's name",
-            )
-    return found
 
 
 def _counts(
@@ -317,7 +236,7 @@ def _counts(
     findings: Findings,
 ) -> list[Part]:
     parts = []
-    for variable, label, column in _count_columns(table, source, variables, findings):
+    for variable, label, column in count_columns(table, source, variables, findings):
         texts = Coded(*table.coded(column))
         numbers = np.zeros(len(texts.texts), dtype=np.int64)
         missing = _is_missing(texts.texts, source.missing) | blank_texts(texts.texts)
@@ -340,43 +259,6 @@ def _counts(
         item_codes = Coded(items.codes[each], items.texts)
         parts.append(Part(variable, column, item_codes, None, labels, table.rows[each], None, 0))
     return parts
-
-
-def _count_columns(
-    table: Table, source: LabelSource, variables: Sequence[Variable], findings: Findings
-) -> list[tuple[str, str, int]]:
-    item = table.find(source.item)
-    if source.columns is not None:
-        return _columns_by_pattern(table, source.columns, variables, item, "label", findings)
-    if len(variables) > 1:
-        findings.add(
-            f"{len(variables)} variables need a pattern to tell their columns apart",
-            table.place,
-            'give one: columns = "{variable}_{label}"',
-        )
-        return []
-    variable = variables[0]
-    if variable.labels is None:
-        return [
-            (variable.name, name, at)
-            for at, name in enumerate(table.header)
-            if at != item and name.strip()
-        ]
-    found = []
-    for label in variable.labels:
-        at = _find(table, label, "a label", findings)
-        if at is not None:
-            found.append((variable.name, label, at))
-    named = {fold(label) for label in variable.labels} | {fold(source.item)}
-    for at, name in enumerate(table.header):
-        if name.strip() and fold(name) not in named:
-            findings.add(
-                "the column is no declared label, so its counts are left out",
-                table.at(None, at),
-                "declare the label, or ignore this where the column is something else",
-                "note",
-            )
-    return found
 
 
 def _is_missing(texts: Texts, missing: Sequence[str]) -> BoolArray:
@@ -417,14 +299,12 @@ def _report_blank_items(table: Table, item: int, parts: Sequence[Part], findings
 
 def _without_blank(part: Part) -> Part:
     blank = blank_texts(part.items.texts)
-    if not blank.any():
-        return part
     keep = ~blank[part.items.codes]
     coders = part.coders
     return Part(
         part.variable,
         part.column,
-        Coded(part.items.codes[keep], part.items.texts),
+        Coded((np.cumsum(~blank) - 1)[part.items.codes[keep]], part.items.texts[~blank]),
         None if coders is None else Coded(coders.codes[keep], coders.texts),
         Coded(part.labels.codes[keep], part.labels.texts),
         part.rows[keep],

@@ -259,7 +259,7 @@ _DIGIT = 1038
 _INSET = 0.9  # what a cell keeps free at its sides, in digits
 _ADVANCES = {
     462: " ijl'`|.,:;", 625: "ftrI()[]{}-/\\!\"", 850: "szcJLF?_", 930: "kvxygES*^T<>=+~#$",
-    1076: "abdehnopquBKPXYCRVZ0123456789", 1290: "AGHNOUD&", 1470: "wQ", 1700: "m%@MW",
+    1076: "abdehnopquBKPXYCRVZ", 1038: "0123456789", 1290: "AGHNOUD&", 1470: "wQ", 1700: "m%@MW",
 }  # fmt: skip
 _WIDTHS = {
     character: advance / _DIGIT for advance, group in _ADVANCES.items() for character in group

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
+from relook.cli.commands.check import check
 from relook.cli.commands.collect import collect
 from relook.cli.commands.new import new
 from relook.cli.commands.queue import queue
@@ -16,6 +17,7 @@ from relook.cli.commands.why import why
 COMMANDS: dict[str, list[tuple[str, Callable[..., Any], str]]] = {
     "Look": [
         ("new", new, "relook new labels.csv items.csv --into my_project"),
+        ("check", check, "relook check my_project --problems problems.csv"),
         ("score", score, "relook score my_project"),
         ("why", why, "relook why my_project r017"),
     ],

@@ -1,0 +1,62 @@
+"""The screen of `relook check`: errors first, then warnings, then notes, each with its mend."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from rich.console import RenderableType
+from rich.text import Text
+
+from relook.cli.screens.layout import counted, heading, note, stacked
+from relook.errors import Problem
+from relook.tables.checking import Checked
+
+_SHOWN = 20
+
+
+def check_screen(checked: Checked) -> RenderableType:
+    """Lay out the first 20 findings and their number."""
+    found = checked.problems
+    if not found:
+        return Text("Nothing wrong was found.")
+    parts: list[RenderableType] = [heading(_sum(found))]
+    for problem in found[:_SHOWN]:
+        parts += [Text(""), note(f"{problem.severity}: {problem}")]
+    if len(found) > _SHOWN:
+        left = len(found) - _SHOWN
+        parts += [Text(""), note(f"… and {left:,} more; --problems FILE.csv writes them all")]
+    return stacked(*parts)
+
+
+def check_object(checked: Checked) -> dict[str, Any]:
+    """Return everything that `relook check --json` writes, but for its format number."""
+    return {
+        "errors": _count(checked.problems, "error"),
+        "warnings": _count(checked.problems, "warning"),
+        "notes": _count(checked.problems, "note"),
+        "problems": [
+            {
+                "severity": problem.severity,
+                "message": problem.message,
+                "file": None if problem.where is None else problem.where.file,
+                "sheet": None if problem.where is None else problem.where.sheet,
+                "row": None if problem.where is None else problem.where.row,
+                "column": None if problem.where is None else problem.where.column,
+                "mend": problem.mend,
+            }
+            for problem in checked.problems
+        ],
+    }
+
+
+def _count(problems: tuple[Problem, ...], severity: str) -> int:
+    return sum(1 for problem in problems if problem.severity == severity)
+
+
+def _sum(problems: tuple[Problem, ...]) -> str:
+    words = (("error", "error"), ("warning", "warning"), ("note", "note"))
+    return ", ".join(
+        counted(_count(problems, severity), word)
+        for severity, word in words
+        if _count(problems, severity)
+    )
