@@ -156,7 +156,7 @@ def test_the_sheet_and_the_header_row_that_fit_are_found() -> None:
     )
     table = table_from_bytes(data, "t.xlsx", wanted=("clip_id", "call"))
     assert (table.sheet, table.header, table.rows.tolist()) == ("Calls", ("Clip ID", "call"), [4])
-    assert table.said == 't.xlsx: xlsx, sheet "Calls", header in row 3, 1 rows'
+    assert table.said == 't.xlsx: xlsx, sheet "Calls", header in row 3, 1 row'
 
 
 @pytest.mark.parametrize(

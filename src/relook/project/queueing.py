@@ -153,7 +153,7 @@ def plan_round(
         n_drawn = len({item.item for item in audits})
         items += audits
     else:
-        ordering = _nothing_ranked(loaded, request)
+        ordering, overlap = _nothing_ranked(loaded, request), 0.0
     if not items:
         raise RelookError(
             "there is no split and no contradicted unanimous item",

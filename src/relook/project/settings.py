@@ -191,6 +191,7 @@ def _variable(name: str, table: dict[str, Any], root: Path) -> Variable:
         # Through its decimal text, so that 0.1 is a tenth and not the nearest binary float.
         tolerance=Fraction(Decimal(str(table.get("tolerance", 0)))),
         code_book=root / table["code_book"] if "code_book" in table else None,
+        decimal=table.get("decimal", "."),
         options=options,
     )
 

@@ -108,6 +108,7 @@ _VARIABLE: dict[str, _Check] = {
     "code_book": _is_text,
     "weight": _is_amount_or_none,
     "tolerance": _is_amount_or_none,
+    "decimal": _one_of(".", ","),
     **OPTIONS,
 }
 _ITEMS: dict[str, _Check] = {

@@ -93,6 +93,8 @@ def _variable_lines(variable: Variable) -> list[_Line]:
     lines.append(("weight", variable.weight, "its weight beside the other variables"))
     if variable.tolerance:
         lines.append(("tolerance", variable.tolerance, "numbers this close are no dispute"))
+    if variable.decimal != ".":
+        lines.append(("decimal", variable.decimal, "mark before the decimals of a number"))
     return lines
 
 

@@ -20,6 +20,7 @@ from relook.core.exact import IntArray
 from relook.errors import Place, RelookError, nearest
 from relook.tables.delimited import Cells, read_delimited
 from relook.tables.encodings import decode
+from relook.tables.findings import counted
 from relook.tables.formats import CellFault, read_json_lines, read_parquet, read_sheet
 from relook.tables.headers import find_column
 
@@ -172,7 +173,7 @@ def table_from_bytes(
             where=Place(file),
             mend="leave the sheet out",
         )
-    said = f"{file}: {', '.join(how)}, {len(cells.frame):,} rows"
+    said = f"{file}: {', '.join(how)}, {counted(len(cells.frame), 'row')}"
     return Table(file, title, cells.header, cells.frame, cells.rows, digest, said, faults)
 
 

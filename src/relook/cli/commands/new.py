@@ -73,6 +73,23 @@ def new(
         list[str] | None,
         typer.Option("--show", metavar="COLUMN", help="Shown to adjudicators; repeatable."),
     ] = None,
+    group_by: Annotated[
+        list[str] | None,
+        typer.Option("--group-by", metavar="COLUMN", help="For the breakdown; repeatable."),
+    ] = None,
+    remark: Annotated[
+        str | None,
+        typer.Option("--remark", metavar="COLUMN", help="Column of a coder's remark on a label."),
+    ] = None,
+    sheet: Annotated[
+        str | None, typer.Option("--sheet", metavar="TITLE", help="Sheet of a workbook.")
+    ] = None,
+    delimiter: Annotated[
+        str | None, typer.Option("--delimiter", metavar="MARK", help="Between cells of a row.")
+    ] = None,
+    encoding: Annotated[
+        str | None, typer.Option("--encoding", metavar="NAME", help="Of the text files.")
+    ] = None,
     yes: Annotated[bool, typer.Option("--yes", "-y", help="Write without asking.")] = False,
     dry_run: DryRunOption = False,
     force: ForceOption = False,
@@ -115,6 +132,11 @@ def new(
             items=tuple(items or ()),
             key=key,
             show=None if show is None else tuple(show),
+            group_by=None if group_by is None else tuple(group_by),
+            remark=remark,
+            sheet=sheet,
+            delimiter=delimiter,
+            encoding=encoding,
         )
         guessed = guessed_project(tables, overrides)
         for line in guessed.said:
