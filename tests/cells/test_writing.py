@@ -8,6 +8,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from openpyxl import Workbook, load_workbook
+
 from relook.cells.writing import (
     CUT_MARKER,
     MOST_BREAKS,
@@ -32,7 +33,7 @@ def test_ordinary_text_is_left_alone(text: str) -> None:
 
 
 @pytest.mark.parametrize(
-    "character", ["\x00", "\x08", "\x0b", "\x1f", "\ufffe", "\uffff", "\ud800", "\udfff"]
+    "character", [chr(code) for code in (0, 8, 11, 31, 0xFFFE, 0xFFFF, 0xD800, 0xDFFF)]
 )
 def test_characters_that_xml_cannot_hold_are_replaced_and_noted(character: str) -> None:
     """Each becomes U+FFFD, so that something is still seen to stand there."""

@@ -96,9 +96,7 @@ def test_a_row_that_cannot_be_taken_is_listed_with_its_mend(ferry, capsys):
     first = collected["rejected"][0]
     assert first["found"] == "dellay"
     assert '"delay"' in first["mend"]
-    code, mended = json_of(
-        capsys, "collect", ferry, "--mend-sheet", ferry / "mend.xlsx", "--dry-run"
-    )
+    json_of(capsys, "collect", ferry, "--mend-sheet", ferry / "mend.xlsx", "--dry-run")
     assert not (ferry / "mend.xlsx").exists()
     run(["collect", str(ferry), "--mend-sheet", str(ferry / "mend.xlsx"), "--quiet"])
     assert fill(ferry / "mend.xlsx", ferry / "mended.xlsx", lambda item, variable: "delay") == rows
@@ -199,7 +197,7 @@ def test_a_bare_table_makes_a_project_beside_it(ferry, tmp_path, capsys, monkeyp
 
 
 def test_reading_commands_leave_a_bare_table_alone(ferry, tmp_path, capsys, monkeypatch):
-    """score and why on a table write nothing beside it."""
+    """Score and why on a table write nothing beside it."""
     monkeypatch.chdir(tmp_path)
     shutil.copy(ferry / "labels/labels.csv", tmp_path / "mine.csv")
     before = sorted(tmp_path.iterdir())
@@ -209,7 +207,7 @@ def test_reading_commands_leave_a_bare_table_alone(ferry, tmp_path, capsys, monk
 
 
 def test_labels_that_are_all_the_same_are_undefined_and_not_queued(tmp_path, capsys):
-    """score says undefined and exits 0; queue exits 1 and makes no folder."""
+    """Score says undefined and exits 0; queue exits 1 and makes no folder."""
     table = tmp_path / "same.csv"
     table.write_text(
         "item,coder,label\n" + "".join(f"i{i},c{c},yes\n" for i in range(5) for c in "ab"),

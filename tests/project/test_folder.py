@@ -46,7 +46,11 @@ def test_a_lost_secret_is_not_replaced(project):
 def test_a_second_writer_waits_and_then_gives_up(project, monkeypatch):
     """The lock names the folder and the mend."""
     monkeypatch.setattr(folder, "_LOCK_SECONDS", 0.05)
-    with project.lock(), pytest.raises(RelookError, match="another relook is writing"), project.lock():
+    with (
+        project.lock(),
+        pytest.raises(RelookError, match="another relook is writing"),
+        project.lock(),
+    ):
         pytest.fail("two writers at once")
 
 

@@ -16,6 +16,7 @@ from xml.etree import ElementTree
 import pytest
 from openpyxl import load_workbook
 from openpyxl.workbook import Workbook
+
 from relook.worksheet.keys import row_keys
 from relook.worksheet.model import CodeBookEntry, SheetRow, SheetVariable, Worksheet
 from relook.worksheet.write import write_worksheet

@@ -5,11 +5,16 @@ from __future__ import annotations
 import io
 import random
 import re
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
 import pytest
 from openpyxl import load_workbook
+from sklearn.ensemble import RandomForestClassifier
+from sklearn.metrics import roc_auc_score
+from sklearn.model_selection import StratifiedKFold, cross_val_predict
+
 from reference.made_sheets import (
     REASONS,
     SECRET,
@@ -31,9 +36,6 @@ from relook.worksheet.lists_sheet import Lists
 from relook.worksheet.model import CodeBookEntry, SheetRow, SheetVariable, Worksheet
 from relook.worksheet.plan import Adjudicator, PlanItem, plan_worksheets
 from relook.worksheet.write import write_worksheet
-from sklearn.ensemble import RandomForestClassifier
-from sklearn.metrics import roc_auc_score
-from sklearn.model_selection import StratifiedKFold, cross_val_predict
 
 LABELS = ("delay", "crew", "comfort", "price", "other")
 CODERS = ("zebedee", "yolanda", "xanthippe")
@@ -117,7 +119,7 @@ def features_of(worksheet: Worksheet) -> tuple[list[list[float]], list[str]]:
         cells = sheet[number]
         labels = [cells[place].value for place in at if cells[place].value]
         ranks = [LABELS.index(label) for label in labels]
-        rising = sum(a < b for a, b in zip(ranks, ranks[1:], strict=False))
+        rising = sum(a < b for a, b in pairwise(ranks))
         rows.append(
             [
                 len(labels),

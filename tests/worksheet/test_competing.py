@@ -6,6 +6,7 @@ import random
 from collections import Counter
 
 import pytest
+
 from reference.made_sheets import SECRET
 from relook.errors import RelookError
 from relook.worksheet.competing import RowLabels, competing_labels, pairs_of, shown_order

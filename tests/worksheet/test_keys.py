@@ -7,6 +7,7 @@ import re
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from reference.made_sheets import SECRET
 from relook.cells.writing import storable
 from relook.worksheet import keys

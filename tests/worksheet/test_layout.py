@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from reference.made_sheets import made_worksheet
 from relook.worksheet.layout import (
     columns_of,

@@ -10,6 +10,7 @@ from pathlib import Path
 
 import pytest
 from openpyxl import load_workbook
+
 from reference.made_sheets import converted, formulas_of, parts_of
 from relook.worksheet.overview import (
     CoderRow,

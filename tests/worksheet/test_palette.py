@@ -6,6 +6,7 @@ from itertools import combinations
 
 import numpy as np
 import pytest
+
 from relook.worksheet.palette import (
     AMISS,
     DONE,

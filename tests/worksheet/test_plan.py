@@ -7,6 +7,7 @@ from collections import Counter
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from reference.made_sheets import SECRET
 from relook.errors import RelookError
 from relook.worksheet.plan import Adjudicator, Plan, PlanItem, plan_worksheets

@@ -11,6 +11,7 @@ from pathlib import Path
 
 import pytest
 from openpyxl import load_workbook
+
 from reference.made_sheets import (
     CRUMB,
     CRUST,

@@ -107,6 +107,14 @@ class Terminal:
             ) from None
 
 
+class _PipeConsole(Console):
+    """A console that lets a closed pipe be answered in one place, with its own exit code."""
+
+    def on_broken_pipe(self) -> None:
+        """Raise what happened; rich itself would exit with 1, which means something else here."""
+        raise BrokenPipeError
+
+
 def _console(file: IO[str]) -> Console:
     """A console that never breaks user text: no markup, no emoji codes, no automatic colours.
 
@@ -114,4 +122,4 @@ def _console(file: IO[str]) -> Console:
     """
     probe = Console(file=file)
     width = max(_NARROWEST, probe.width) if probe.is_terminal else _PLAIN_WIDTH
-    return Console(file=file, width=width, markup=False, emoji=False, highlight=False)
+    return _PipeConsole(file=file, width=width, markup=False, emoji=False, highlight=False)

@@ -110,30 +110,46 @@ class Project:
         RelookError
             The secret is damaged, or missing although rounds were written with one.
         """
+        if not self.has_secret:
+            self.keep_secret(self.secret_or_new())
+        return self.secret_or_new()
+
+    def secret_or_new(self) -> bytes:
+        """Return the project's secret, or a new one that nothing is done with yet.
+
+        Raises
+        ------
+        RelookError
+            As for `secret`.
+        """
         file = self._secret_file
-        if file.exists():
-            text = file.read_text(encoding="ascii", errors="replace").strip()
-            try:
-                secret = bytes.fromhex(text)
-            except ValueError:
-                secret = b""
-            if len(secret) < 16:
+        where = Place(self.relative(file))
+        if not file.exists():
+            if any(self.rounds_folder.glob("*/round.json")):
                 raise RelookError(
-                    "the project's secret is damaged",
-                    where=Place(self.relative(file)),
-                    mend="restore the file from a copy of the project folder",
+                    "the project's secret is missing, and rounds were already written with it",
+                    where=where,
+                    mend="restore the hidden folder .relook from a copy of the project folder",
                 )
-            return secret
-        if self.rounds_folder.is_dir() and any(self.rounds_folder.glob("*/round.json")):
+            return secrets.token_bytes(32)
+        text = file.read_text(encoding="ascii", errors="replace").strip()
+        try:
+            secret = bytes.fromhex(text)
+        except ValueError:
+            secret = b""
+        if len(secret) < 16:
             raise RelookError(
-                "the project's secret is missing, and rounds were already written with it",
-                where=Place(self.relative(file)),
-                mend="restore the hidden folder .relook from a copy of the project folder",
+                "the project's secret is damaged",
+                where=where,
+                mend="restore the file from a copy of the project folder",
             )
-        write_whole(file, secrets.token_hex(32).encode("ascii") + b"\n")
+        return secret
+
+    def keep_secret(self, secret: bytes) -> None:
+        """Write the project's first secret."""
+        write_whole(self._secret_file, secret.hex().encode("ascii") + b"\n")
         with contextlib.suppress(OSError):  # some file systems have no permission bits
-            file.chmod(0o600)
-        return self.secret()
+            self._secret_file.chmod(0o600)
 
     @contextlib.contextmanager
     def lock(self) -> Iterator[None]:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import secrets as random_secrets
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -36,6 +35,7 @@ class QueueRun:
     planned : PlannedRound
     issued : IssuedRound
     overview : Path
+    n_earlier_rounds : int
     dry_run : bool
     """
 
@@ -44,6 +44,7 @@ class QueueRun:
     planned: PlannedRound
     issued: IssuedRound
     overview: Path
+    n_earlier_rounds: int
     dry_run: bool
 
 
@@ -76,24 +77,30 @@ def run_queue(
     RelookError
         See `plan_round` and `write_round`.
     """
-    if dry_run:
-        # A rehearsal must leave no trace, not even a secret.
-        secret = project.secret() if project.has_secret else random_secrets.token_bytes(32)
-        return _plan(load(project), request, secret, stamp, dry_run=True)
-    if not new_project:
-        return _write(load(project), request, stamp, force=force)
-    with folder_for(project) as made:
-        loaded = load(made)
-        # Planned first for its errors, so that a table with nothing to queue makes no folder.
-        _plan(loaded, request, random_secrets.token_bytes(32), stamp, dry_run=True)
-        write_settings(made)
-        return _write(loaded, request, stamp, force=force)
+    if new_project and not dry_run:
+        with folder_for(project) as made:
+            return _write(load(made), request, stamp, new_project=True, force=force)
+    loaded = load(project)
+    if dry_run:  # a rehearsal leaves no trace, not even a secret
+        return _plan(loaded, request, project.secret_or_new(), stamp, dry_run=True)
+    return _write(loaded, request, stamp, new_project=False, force=force)
 
 
-def _write(loaded: Loaded, request: QueueRequest, stamp: str, *, force: bool) -> QueueRun:
+def _write(
+    loaded: Loaded, request: QueueRequest, stamp: str, *, new_project: bool, force: bool
+) -> QueueRun:
+    """Plan a round, and only then touch the folder: with nothing to queue nothing is written."""
     project = loaded.project
+    secret = project.secret_or_new()
+    run = _plan(loaded, request, secret, stamp, dry_run=False)
+    if new_project:
+        write_settings(project)
     with project.lock():
-        run = _plan(loaded, request, project.secret(), stamp, dry_run=False)
+        if not project.has_secret:
+            project.keep_secret(secret)
+        if project.secret() != secret or len(read_rounds(project)) != run.n_earlier_rounds:
+            # Somebody else wrote a round since; plan again on top of it.
+            run = _plan(loaded, request, project.secret(), stamp, dry_run=False)
         overview = write_overview(overview_of(run.score, run.planned, run.issued))
         write_round(project, run.issued, overview, force=force)
     return run
@@ -113,6 +120,7 @@ def _plan(
         planned=planned,
         issued=issued,
         overview=project.round_folder(planned.number) / OVERVIEW_FILE,
+        n_earlier_rounds=len(history.rounds),
         dry_run=dry_run,
     )
 

@@ -121,7 +121,7 @@ _ITEMS: dict[str, _Check] = {
 }
 _QUEUE: dict[str, _Check] = {
     "rank_by": _one_of("contribution", "doubt", "intensity"),
-    "top": _is_count,
+    "top": lambda value: None if _is_count(value) is None and value else "1 or more",
     "share": _is_share,
     "hours": _is_amount,
     "seconds_per_item": _is_amount,

@@ -115,6 +115,8 @@ def weigh(record: Record, files: Sequence[CheckedFile], *, reinstate: bool) -> W
             answered = report.key in found or report.key in past.of_row
             if not (file.seen and answered):
                 result.rejected.append(report)
+    for reports in (result.rejected, result.edited, result.older, result.adjusted):
+        reports.sort(key=lambda report: (report.worksheet, report.sheet or "", report.row))
     return result
 
 

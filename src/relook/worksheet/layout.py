@@ -261,9 +261,19 @@ _ADVANCES = {
     462: " ijl'`|.,:;", 625: "ftrI()[]{}-/\\!\"", 850: "szcJLF?_", 930: "kvxygES*^T<>=+~#$",
     1076: "abdehnopquBKPXYCRVZ", 1038: "0123456789", 1290: "AGHNOUD&", 1470: "wQ", 1700: "m%@MW",
 }  # fmt: skip
-_WIDTHS = {
-    character: advance / _DIGIT for advance, group in _ADVANCES.items() for character in group
-}
+
+
+class _Widths(dict[str, float]):
+    """Widths of characters in digits, worked out once for those that no table lists."""
+
+    def __missing__(self, character: str) -> float:
+        width = self[character] = _other_width(character)
+        return width
+
+
+_WIDTHS = _Widths(
+    (character, advance / _DIGIT) for advance, group in _ADVANCES.items() for character in group
+)
 
 
 def display_width(text: str) -> float:
@@ -272,14 +282,7 @@ def display_width(text: str) -> float:
     Characters beyond ASCII come from fonts unknown and are taken for rather wide: East Asian ones
     and pictographs count two, marks none.
     """
-    return sum(map(_character_width, text))
-
-
-def _character_width(character: str) -> float:
-    known = _WIDTHS.get(character)
-    if known is None:
-        known = _WIDTHS[character] = _other_width(character)
-    return known
+    return sum(map(_WIDTHS.__getitem__, text))
 
 
 def _other_width(character: str) -> float:

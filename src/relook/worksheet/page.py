@@ -57,7 +57,7 @@ def set_up_page(
         sheet.print_title_rows = "1:1"
     margins = sheet.page_margins
     margins.left = margins.right = 0.4
-    margins.top, margins.bottom = 0.5, 0.6
+    margins.top, margins.bottom = 0.5, 0.75
     _set_footer(sheet, footer)
 
 

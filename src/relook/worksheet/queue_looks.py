@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import unicodedata
-from dataclasses import dataclass, replace
+from dataclasses import replace
+from typing import NamedTuple
 
 from openpyxl.styles.cell_style import StyleArray
 
@@ -13,22 +14,22 @@ from relook.worksheet.layout import Column
 from relook.worksheet.looks import TEXT_FORMAT, Look, Looks
 from relook.worksheet.model import SheetRow, Worksheet
 
+_READ = ("item", "shown", "remark", "label")
 _LONG = 600  # characters from which a text may be higher than the page allows
 
 
-@dataclass(frozen=True, slots=True)
-class _Case:
+class _Case(NamedTuple):
     """Everything that the look of a cell depends on."""
 
     role: str
-    index: int
+    place: int
     variable: str
-    fill: str | None
-    mirrored: bool
-    link: bool
-    quoted: bool
-    repeats: bool
-    long: bool
+    fill: str | None = None
+    mirrored: bool = False
+    link: bool = False
+    quoted: bool = False
+    repeats: bool = False
+    long: bool = False
 
 
 class RowStyles:
@@ -66,21 +67,25 @@ class RowStyles:
             Whether the row above shows the same item.
         """
         role = column.role
-        fill = None
-        if role == "label" and text and len(row.competing) <= layout.MOST_LABEL_COLUMNS:
-            fill = self._colours.get(row.variable, {}).get(row.competing[column.index])
-        read = role in ("item", "shown", "remark", "label") and bool(text)
-        case = _Case(
-            role=role,
-            index=column.index,
-            variable=row.variable,
-            fill=fill,
-            mirrored=read and not text.isascii() and reads_right_to_left(text),
-            link=role == "shown" and is_web_link(text),
-            quoted=text[:1] in ("=", "+", "-", "@"),
-            repeats=repeats,
-            long=role == "shown" and len(text) > (4 * column.width if repeats else _LONG),
-        )
+        variable = row.variable
+        if not text:
+            case = _Case(role, column.index, variable, repeats=repeats)
+        else:
+            fill = None
+            if role == "label" and len(row.competing) <= layout.MOST_LABEL_COLUMNS:
+                fill = self._colours.get(variable, {}).get(row.competing[column.index])
+            shown = role == "shown"
+            case = _Case(
+                role,
+                column.index,
+                variable,
+                fill,
+                role in _READ and not text.isascii() and reads_right_to_left(text),
+                shown and text[:4].lower() == "http" and is_web_link(text),
+                text[0] in "=+-@",
+                repeats,
+                shown and len(text) > (4 * column.width if repeats else _LONG),
+            )
         known = self._known.get(case)
         if known is None:
             look = self._look(case)
@@ -103,14 +108,14 @@ class RowStyles:
                 size = layout.SMALL if case.repeats else 9.0
                 return replace(base, size=size, colour=palette.GREY)
             case "shown":
-                main = case.index == self._main and not case.repeats
+                main = case.place == self._main and not case.repeats
                 return replace(
                     base,
                     size=layout.SMALL if case.repeats else layout.TEXT if main else 9.0,
                     colour=palette.INK if main else palette.GREY,
                     down="top" if case.long else "center",
                     underline=case.link,
-                    indent=int(case.index != self._main),
+                    indent=int(case.place != self._main),
                 )
             case "variable":
                 several = len(self._variables) > 1
@@ -123,7 +128,7 @@ class RowStyles:
     def _field_look(self, case: _Case, base: Look) -> Look:
         variable = self._variables.get(case.variable)
         if case.role == "tick":
-            label = self._tick_labels[case.index]
+            label = self._tick_labels[case.place]
             offered = variable is not None and variable.entry == "set" and label in variable.labels
             return replace(base, across="center", fill=palette.FIELD if offered else None)
         if case.role == "decision":
