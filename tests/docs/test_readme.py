@@ -2,7 +2,7 @@
 
 A fenced block marked `sh` holds commands; a block marked `text` right after it holds lines of what
 they print, "…" standing for lines left out. The two set-up commands run in .ci/run, which takes
-them from the README too. With RELOOK_REFRESH=1 the shown lines are brought up to date instead.
+them from the README too.
 """
 
 from __future__ import annotations

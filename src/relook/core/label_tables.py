@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.contributions import coder_index, entry_parts, shares
+from relook.core.contributions import PairParts, coder_index, entry_parts, shares
 from relook.core.exact import FloatArray, IntArray, grouped_sums
 
 
@@ -80,8 +80,51 @@ def label_use(agreement: Agreement) -> Use:
     return Use(of_coder, value, often)
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Meetings:
+    """How often one coder's value met another's on the same item; only what occurs.
+
+    Attributes
+    ----------
+    first, second : int array of shape (n_met,)
+        The value of the one coder and that of the other; by first, then second.
+    n_items : int array of shape (n_met,)
+    """
+
+    first: IntArray
+    second: IntArray
+    n_items: IntArray
+
+
+def meetings(agreement: Agreement, first: int, second: int) -> Meetings:
+    """Return which values of two coders met, and on how many items.
+
+    Parameters
+    ----------
+    agreement : Agreement
+    first, second : int
+        The two coders.
+
+    Raises
+    ------
+    RelookError
+        The labels carry no coders.
+    """
+    coder, labels = coder_index(agreement), agreement.labels
+    given = []
+    for one in (first, second):
+        value = np.full(labels.n_items, -1, dtype=np.int64)
+        value[labels.item_index[coder == one]] = labels.value_index[coder == one]
+        given.append(value)
+    both = (given[0] >= 0) & (given[1] >= 0)
+    n_values = max(1, labels.n_values)
+    key, n_items = np.unique(given[0][both] * n_values + given[1][both], return_counts=True)
+    of_first, of_second = np.divmod(key, n_values)
+    return Meetings(of_first, of_second, n_items)
+
+
 def cross_table(agreement: Agreement, first: int, second: int) -> IntArray:
-    """Return how often one coder's value met another's on the same item.
+    """Return how often one coder's value met another's on the same item, as a table.
 
     Parameters
     ----------
@@ -93,13 +136,25 @@ def cross_table(agreement: Agreement, first: int, second: int) -> IntArray:
     -------
     int array of shape (n_values, n_values)
     """
-    coder, labels = coder_index(agreement), agreement.labels
-    given = []
-    for one in (first, second):
-        value = np.full(labels.n_items, -1, dtype=np.int64)
-        value[labels.item_index[coder == one]] = labels.value_index[coder == one]
-        given.append(value)
-    both = (given[0] >= 0) & (given[1] >= 0)
-    n_values = labels.n_values
-    key = given[0][both] * n_values + given[1][both]
-    return np.bincount(key, minlength=n_values * n_values).reshape(n_values, n_values)
+    met, n_values = meetings(agreement, first, second), agreement.labels.n_values
+    table = np.zeros((n_values, n_values), dtype=np.int64)
+    table[met.first, met.second] = met.n_items
+    return table
+
+
+def chance_shares(agreement: Agreement, pairs: PairParts) -> FloatArray:
+    """Return the share of D_e of each pair of values, shape (n_pairs,).
+
+    Beside the share of D_o it tells whether two labels clash beyond what their frequency and their
+    distance would have them clash; all 0 where D_e is 0 or undefined.
+
+    Notes
+    -----
+    2 n_c n_k δ²_ck/(n (n − 1))/D_e.
+    """
+    n, expected = agreement.n_pairable_labels, agreement.expected_disagreement
+    if not expected:
+        return np.zeros(pairs.first.size)
+    often = agreement.marginals.astype(np.float64)
+    delta = agreement.differences.between(pairs.first, pairs.second)
+    return np.asarray(2 * often[pairs.first] * often[pairs.second] * delta / n / (n - 1) / expected)

@@ -134,27 +134,6 @@ def explain(loaded: Loaded, item: str) -> list[Explanation]:
     return found
 
 
-def consensus_text(
-    held: VariableLabels, consensus: Consensus, profile: int
-) -> tuple[str | None, tuple[str, ...]]:
-    """Return the consensus label of a profile as text, and the tied labels where there is none."""
-    if consensus.tie[profile]:
-        return None, tuple(held.texts[value] for value in consensus.tied_values(profile))
-    value = int(consensus.value_index[profile])
-    if value >= 0:
-        return held.texts[value], ()
-    mean = consensus.mean(profile)
-    if mean is not None:
-        return plain_number(mean), ()
-    number = None if consensus.number is None else float(consensus.number[profile])
-    return (None if number is None or np.isnan(number) else f"{number:.6g}"), ()
-
-
-def consensus_for(agreement: Agreement) -> Consensus:
-    """Find the consensus labels of a variable as its difference function asks."""
-    return consensus_of(agreement.profiles, agreement.function, agreement.values)
-
-
 def _explain(loaded: Loaded, name: str, item: int) -> Explanation:
     held = loaded.labels.variables[name]
     agreement = loaded.agreements[name]

@@ -8,7 +8,7 @@ import pandas as pd
 from relook.core.contributions import alpha_costs, intensity
 from relook.core.exact import FloatArray, IntArray
 from relook.core.settling import decided_values, settled_alphas
-from relook.project.explaining import consensus_text
+from relook.project.consensus_texts import consensus_texts
 from relook.project.scoring import Score, VariableScore
 
 COLUMNS = (
@@ -41,8 +41,11 @@ def item_table(score: Score, n_items: int | None = None) -> pd.DataFrame:
     -------
     DataFrame
         Columns `COLUMNS`. An item has a row for each variable that it is sent for. `share` and
-        `cumulative_share` are of the variable's D_o; `settled_alpha` is agreement in the corrected
-        data if that item alone took its consensus label, empty where that is a tie.
+        `cumulative_share` are of the variable's D_o, the latter of its rows down to this one;
+        `intensity` is the mean δ² over the item's pairs of labels; `consensus` names tied labels
+        with " | " between, and `tie` says so; `settled_alpha` is agreement in the corrected data if
+        that item alone took its consensus label, nan where that is a tie. `doubt` is nan where
+        there is no ground for it.
     """
     ranking = score.ordering.ranking
     n = ranking.n_items if n_items is None else min(n_items, ranking.n_items)
@@ -57,13 +60,9 @@ def item_table(score: Score, n_items: int | None = None) -> pd.DataFrame:
         frame.insert(0, "rank", place[rows] + 1)
         frame.index = pd.Index(rows)
         frames.append(frame)
+    # Frames without rows would only turn the types of the others' columns.
     table = pd.concat([frame for frame in frames if len(frame)] or frames[:1]).sort_index()
     return table.loc[:, list(COLUMNS)].reset_index(drop=True)
-
-
-def item_table_csv(table: pd.DataFrame) -> bytes:
-    """Return a table as CSV bytes with full-precision numbers; undefined ones are empty."""
-    return table.to_csv(index=False, lineterminator="\n").encode("utf-8")
 
 
 def _rows_of_variable(score: Score, scored: VariableScore, items: IntArray) -> pd.DataFrame:
@@ -73,9 +72,8 @@ def _rows_of_variable(score: Score, scored: VariableScore, items: IntArray) -> p
     costs = alpha_costs(agreement, contribution)
     profile = agreement.profile_of_item[items]
     distinct, which = np.unique(profile, return_inverse=True)
-    texts = [consensus_text(scored.held, scored.consensus, int(p)) for p in distinct]
-    consensus = np.array([text if text is not None else " | ".join(tied) for text, tied in texts])
-    doubt = None if scored.doubt is None else scored.doubt.doubt
+    consensus = consensus_texts(scored.held, scored.consensus, distinct)
+    doubt = scored.doubt.doubt
     none = np.full(items.size, np.nan)
     return pd.DataFrame(
         {
@@ -88,9 +86,9 @@ def _rows_of_variable(score: Score, scored: VariableScore, items: IntArray) -> p
             "intensity": intensity(agreement)[items],
             "doubt": none if doubt is None else doubt[items],
             "n_labels": agreement.profiles.size[profile],
-            "consensus": consensus[which] if distinct.size else np.zeros(0, dtype=object),
+            "consensus": consensus[which],
             "tie": scored.consensus.tie[profile],
-            "settled_alpha": _settled(scored, distinct)[which] if distinct.size else none,
+            "settled_alpha": _settled(scored, distinct)[which],
         }
     )
 

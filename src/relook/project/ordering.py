@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import get_args
 
 import numpy as np
 import pandas as pd
@@ -14,7 +15,8 @@ from relook.core.doubt import Doubt, estimate_doubt
 from relook.core.exact import BoolArray, FloatArray, IntArray
 from relook.core.ranking import RankBy, RankedVariable, Ranking, rank_items
 from relook.core.selection import Selection, select_head
-from relook.project.explaining import consensus_for
+from relook.errors import RelookError, listed, nearest
+from relook.project.consensus_texts import consensus_for
 from relook.project.loading import Loaded, item_texts
 from relook.project.settings import QueueSettings
 from relook.tables.numbers import parse_number
@@ -22,6 +24,8 @@ from relook.tables.schema import Variable
 
 #: The seed where none is given: fixed, so that the same command gives the same result.
 DEFAULT_SEED = 1
+#: What items can be ranked by.
+ORDERS: tuple[RankBy, ...] = get_args(RankBy)
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,7 +37,7 @@ class Ordering:
     ranking : Ranking
     selection : Selection
     doubts : dict of str to Doubt
-        By variable; empty where no order or column asked for doubt.
+        By variable: every order breaks its ties by doubt where there is ground for it.
     """
 
     ranking: Ranking
@@ -46,7 +50,6 @@ def order_items(
     queue: QueueSettings,
     *,
     seed: int,
-    with_doubt: bool = False,
     leave_out: Mapping[str, BoolArray] | None = None,
     n_audit_items: int = 0,
     overlap: float = 0.0,
@@ -59,8 +62,6 @@ def order_items(
     queue : QueueSettings
     seed : int
         Keys the last tie-break, a hash of the item's id.
-    with_doubt : bool
-        Estimate doubt even where the order does not ask for it.
     leave_out : mapping of str to bool array of shape (n_items,), optional
         By variable: items that are settled or still out there.
     n_audit_items : int
@@ -70,14 +71,16 @@ def order_items(
     Raises
     ------
     RelookError
-        A priority that is no number or negative.
+        An order by doubt that no variable has ground for, with the reason of each.
     """
-    doubts = doubts_of(loaded) if with_doubt or queue.rank_by == "doubt" else {}
+    doubts = doubts_of(loaded)
+    if queue.rank_by == "doubt":
+        _refuse_order_by_doubt(doubts)
     variables = [
         ranked_variable(
             loaded.labels.variables[name].variable,
             agreement,
-            doubts.get(name),
+            doubts[name],
             None if leave_out is None else leave_out[name],
         )
         for name, agreement in loaded.agreements.items()
@@ -122,6 +125,19 @@ def doubts_of(loaded: Loaded) -> dict[str, Doubt]:
     }
 
 
+def _refuse_order_by_doubt(doubts: Mapping[str, Doubt]) -> None:
+    """Refuse an order by doubt where no variable has any."""
+    if any(doubt.doubt is not None for doubt in doubts.values()):
+        return
+    reasons = "; ".join(
+        f"{name}: {doubt.undefined_because}" if len(doubts) > 1 else str(doubt.undefined_because)
+        for name, doubt in doubts.items()
+    )
+    raise RelookError(
+        f"there is no doubt to rank by ({reasons})", mend="rank by contribution or by intensity"
+    )
+
+
 def item_hashes(loaded: Loaded, seed: int) -> IntArray:
     """Return a keyed hash of each item's id, so that no tie follows the order of the file."""
     key = hashlib.sha256(f"tie order {seed}".encode()).hexdigest()[:16]
@@ -159,7 +175,19 @@ def settings_of_queue(queue: QueueSettings, overrides: Mapping[str, object]) -> 
 
     A limit given on the command line replaces all limits of relook.toml: whoever asks for the
     first 100 does not mean the first 40 that were written down earlier.
+
+    Raises
+    ------
+    RelookError
+        An order that is not known.
     """
+    order = overrides.get("rank_by")
+    if order is not None and order not in ORDERS:
+        close = nearest(str(order), ORDERS)
+        raise RelookError(
+            f'"{order}" is no order of items',
+            mend=f'did you mean "{close}"?' if close else f"use one of {listed(ORDERS)}",
+        )
     given = {key: value for key, value in overrides.items() if value is not None}
     held = {name: getattr(queue, name) for name in QueueSettings.__dataclass_fields__}
     if any(limit in given for limit in ("top", "share", "hours")):
