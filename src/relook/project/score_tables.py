@@ -7,12 +7,15 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
+from dataclasses import asdict
 from typing import Any
 
 import numpy as np
 
 from relook.core.contributions import PairParts, Parts
-from relook.project.scoring import Score, VariableScore
+from relook.core.doubt import Doubt
+from relook.project.scoring import NEEDED_ITEMS_FOR, Score, VariableScore
+from relook.project.verdict import verdict
 
 Row = dict[str, Any]
 
@@ -39,14 +42,7 @@ def _variable_row(scored: VariableScore) -> Row:
         "expected_disagreement": agreement.expected_disagreement,
         "interval": None
         if interval is None
-        else {
-            "low": interval.low,
-            "high": interval.high,
-            "confidence_level": interval.confidence_level,
-            "resamples": interval.resamples,
-            "undefined_resamples": interval.undefined_resamples,
-            "seed": interval.seed,
-        },
+        else {**asdict(interval), "resampled_by": scored.clustered_by or "item"},
         "no_interval_because": result.none_because,
         "n_items": agreement.n_items,
         "n_pairable_items": agreement.n_pairable_items,
@@ -54,7 +50,26 @@ def _variable_row(scored: VariableScore) -> Row:
         "n_labels": agreement.n_labels,
         "n_pairable_labels": agreement.n_pairable_labels,
         "n_coders": agreement.n_coders,
-        "needed_items": scored.needed_items,
+        "n_missing_labels": scored.held.n_missing,
+        "needed_items": None if scored.needed_items is None else asdict(scored.needed_items),
+        "no_needed_items_because": NEEDED_ITEMS_FOR if scored.needed_items is None else None,
+        "doubt": _doubt_row(scored.doubt),
+        "doubt_undefined_because": scored.doubt.undefined_because,
+        "verdict": verdict(scored),
+        "no_alpha_without_because": scored.no_without_because,
+        "no_coder_pairs_because": scored.no_coder_pairs_because,
+    }
+
+
+def _doubt_row(doubt: Doubt) -> Row | None:
+    model = doubt.model
+    if model is None:
+        return None
+    return {
+        "converged": model.converged,
+        "steps": model.steps,
+        "shrink": model.shrink,
+        "start": model.start,
     }
 
 
@@ -110,19 +125,26 @@ def _parts_rows(parts: Parts, names: tuple[str, ...]) -> Iterator[tuple[int, str
 
 
 def label_pair_rows(scored: VariableScore) -> list[Row]:
-    """Return the pairs of labels that clash, heaviest first."""
-    return _pair_rows(scored, scored.label_pairs, scored.held.texts)
+    """Return the pairs of labels that clash, heaviest first.
+
+    `chance_share` is the pair's share of D_e: what their frequency and distance would make it.
+    """
+    rows = _pair_rows(scored, scored.label_pairs, scored.held.texts)
+    for row, chance in zip(rows, scored.chance_shares.tolist(), strict=True):
+        row["chance_share"] = chance
+    return rows
 
 
 def coder_pair_rows(scored: VariableScore) -> list[Row]:
     """Return the pairs of coders who meet, heaviest first."""
     if scored.coder_pairs is None:
         return []
-    return _pair_rows(scored, scored.coder_pairs, scored.coder_names)
+    rows = _pair_rows(scored, scored.coder_pairs, scored.coder_names)
+    return sorted(rows, key=lambda row: (-row["contribution"], row["first"], row["second"]))
 
 
 def _pair_rows(scored: VariableScore, pairs: PairParts, names: tuple[str, ...]) -> list[Row]:
-    rows = [
+    return [
         {
             "variable": scored.name,
             "first": names[first],
@@ -135,17 +157,18 @@ def _pair_rows(scored: VariableScore, pairs: PairParts, names: tuple[str, ...]) 
             pairs.first, pairs.second, pairs.contribution, pairs.share, pairs.n_items, strict=True
         )
     ]
-    return sorted(rows, key=lambda row: (-row["contribution"], row["first"], row["second"]))
 
 
 def label_rows(scored: VariableScore) -> list[Row]:
-    """Return how often each label is used, and how well it is agreed on."""
+    """Return how often each label is used, and how well it is agreed on, in the labels' order."""
     parts = scored.label_parts
+    n = max(1, scored.agreement.n_pairable_labels)
     return [
         {
             "variable": scored.name,
             "label": label,
             "n_labels": int(parts.n_labels[value]),
+            "share_of_labels": float(parts.n_labels[value] / n),
             "alpha_against_rest": defined(parts.alpha[value]),
             "involved": float(parts.involved[value]),
         }
@@ -166,28 +189,3 @@ def prospect_rows(scored: VariableScore) -> list[Row]:
         }
         for step in range(held.item_index.size + 1)
     ]
-
-
-def score_object(score: Score) -> Row:
-    """Return everything that `relook score --json` writes, but for its format number."""
-    ranking, selection = score.ordering.ranking, score.ordering.selection
-    each = score.variables
-    return {
-        "seed": score.seed,
-        "rank_by": ranking.rank_by,
-        "bound_by": selection.bound_by,
-        "n_selected_items": selection.n_items,
-        "variables": variable_rows(score),
-        "coders": [row for scored in each for row in coder_rows(scored)],
-        "coder_pairs": [row for scored in each for row in coder_pair_rows(scored)],
-        "label_pairs": [row for scored in each for row in label_pair_rows(scored)],
-        "labels": [row for scored in each for row in label_rows(scored)],
-        "groups": [row for scored in each for row in group_rows(scored)],
-        "prospect": [row for scored in each for row in prospect_rows(scored)],
-        "warnings": [
-            {"variable": scored.name, "warning": scored.interval.warning}
-            for scored in each
-            if scored.interval.warning is not None
-        ]
-        + [{"variable": None, "warning": str(problem)} for problem in score.loaded.problems],
-    }

@@ -15,7 +15,7 @@ from relook.worksheet.model import (
     SHEET_LISTS,
     Worksheet,
 )
-from relook.worksheet.packing import new_workbook, packed
+from relook.worksheet.packing import collection_paused, new_workbook, packed
 from relook.worksheet.queue_sheet import write_queue
 from relook.worksheet.start_sheet import write_start
 
@@ -43,6 +43,11 @@ def write_worksheet(worksheet: Worksheet) -> bytes:
     file is recognised again by its properties, and by the hidden sheet where a program dropped
     those.
     """
+    with collection_paused():
+        return _written(worksheet)
+
+
+def _written(worksheet: Worksheet) -> bytes:
     book = new_workbook(worksheet.title)
     looks = Looks(book)
     write_start(book, looks, worksheet)
