@@ -1,6 +1,6 @@
 """Collect in child processes and kill each at a random moment.
 
-Run as: killing.py TEMPLATE WORK KILLS SECONDS, where SECONDS is how long a whole collect lasts.
+Run as: killing.py TEMPLATE WORK KILLS.
 """
 
 from __future__ import annotations
@@ -18,21 +18,31 @@ from relook.project.collecting import collect
 from relook.project.folder import Project
 
 
-def main(template: Path, work: Path, kills: int, seconds: float) -> None:
-    """Leave `kills` copies of the template behind, a collect killed in each."""
+def main(template: Path, work: Path, kills: int) -> None:
+    """Leave `kills` copies of the template behind, a collect killed in each.
+
+    How long a whole collect lasts is measured here, in a child like those that are killed. The
+    first child is killed at once and the last one never, so that both ends are always there.
+    """
     draw = random.Random(20260301)
-    for number in range(kills):
-        root = work / str(number)
+    lasts = 0.0
+    for number in range(-1, kills):
+        root = work / ("measured" if number < 0 else str(number))
         shutil.copytree(template, root)
         project = Project.open(root)
+        begun = time.perf_counter()
         child = os.fork()
         if child == 0:
             collect(project, None, now=NOW)
             os._exit(0)
-        time.sleep(draw.uniform(0.0, 1.3 * seconds))
-        os.kill(child, signal.SIGKILL)
+        if 0 < number < kills - 1:
+            time.sleep(draw.uniform(0.0, 1.3 * lasts))
+        if 0 <= number < kills - 1:
+            os.kill(child, signal.SIGKILL)
         os.waitpid(child, 0)
+        if number < 0:
+            lasts = time.perf_counter() - begun
 
 
 if __name__ == "__main__":
-    main(Path(sys.argv[1]), Path(sys.argv[2]), int(sys.argv[3]), float(sys.argv[4]))
+    main(Path(sys.argv[1]), Path(sys.argv[2]), int(sys.argv[3]))

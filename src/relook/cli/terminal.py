@@ -39,8 +39,14 @@ class Terminal:
         self.err = _console(stderr or sys.stderr)
 
     def data(self, thing: Any) -> None:
-        """Write something to stdout: a text, or anything that rich can lay out."""
-        self.out.print(Text(thing) if isinstance(thing, str) else thing)
+        """Write something to stdout: a text, or anything that rich can lay out.
+
+        Lines end where their text does, so that what is kept in a file or compared has no padding.
+        """
+        with self.out.capture() as captured:
+            self.out.print(Text(thing) if isinstance(thing, str) else thing)
+        lines = captured.get().split("\n")
+        self.out.file.write("\n".join(line.rstrip(" ") for line in lines))
 
     def json(self, held: dict[str, Any]) -> None:
         """Write one JSON object to stdout, numbers in full and undefined ones as null."""

@@ -71,10 +71,15 @@ class Selection:
             "all disputed items": "; that is all of them",
         }[self.bound_by]
         if len(ranking.variables) > 1 and self.n_items:
-            lead = int(np.argmax(self.led_by_variable))
+            most = int(self.led_by_variable.max())
+            leads = [
+                f'"{name}"'
+                for name, led in zip(ranking.variables, self.led_by_variable.tolist(), strict=True)
+                if led == most
+            ]
             said += (
-                f'; "{ranking.variables[lead]}" filled the queue: heaviest in '
-                f"{int(self.led_by_variable[lead]):,} of {self.n_items:,}"
+                f"; {' and '.join(leads)} filled the queue: heaviest in "
+                f"{most:,} of {self.n_items:,}{' each' if len(leads) > 1 else ''}"
             )
         return said
 

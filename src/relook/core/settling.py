@@ -23,6 +23,7 @@ from relook.errors import RelookError
 
 #: In `agreement_after`: the item was ruled impossible to code, so its labels leave the sums.
 CANNOT_BE_CODED = -1
+_UNTOUCHED = -2
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -264,24 +265,13 @@ def agreement_after(
     """
     values = agreement.values if values is None else values
     labels = agreement.labels
-    item_index = np.asarray(item_index, dtype=np.int64)
     decided = np.asarray(decided, dtype=np.int64)
-    untouched = -2
-    decision_of_item = np.full(labels.n_items, untouched, dtype=np.int64)
-    decision_of_item[item_index] = decided
-    decision = decision_of_item[labels.item_index]
-    corrected = CodedLabels(
-        labels.item_index,
-        np.where(decision >= 0, decision, labels.value_index),
-        labels.coder_index,
-        n_items=labels.n_items,
-        n_values=values.n_values,
-        n_coders=labels.n_coders,
-    ).where(decision != CANNOT_BE_CODED)
+    corrected = corrected_labels(labels, item_index, decided, values.n_values)
     after = measure_agreement(corrected, agreement.function, values)
     disputed_before = np.zeros(labels.n_items, dtype=bool)
     known = agreement.profile_of_item >= 0
     disputed_before[known] = agreement.disputed_profiles[agreement.profile_of_item[known]]
+    disputed_before[np.asarray(item_index, dtype=np.int64)] = False
     return CorrectedAgreement(
         agreement=after.alpha,
         undefined_because=after.undefined_because,
@@ -292,8 +282,41 @@ def agreement_after(
         n_pairable_items=after.n_pairable_items,
         n_pairable_labels=after.n_pairable_labels,
         # Within the tolerance is no dispute, before or after; decisions only ever end one.
-        n_disputed_items=int((disputed_before & (decision_of_item == untouched)).sum()),
+        n_disputed_items=int(disputed_before.sum()),
     )
+
+
+def corrected_labels(
+    labels: CodedLabels, item_index: IntArray, decided: IntArray, n_values: int
+) -> CodedLabels:
+    """Put decisions into the labels.
+
+    Parameters
+    ----------
+    labels : CodedLabels
+    item_index : int array of shape (n,)
+        The settled items, none twice.
+    decided : int array of shape (n,)
+        The decision on each, below `n_values`, or `CANNOT_BE_CODED`.
+    n_values : int
+        Of the corrected labels; decisions may be values that nobody gave.
+
+    Returns
+    -------
+    CodedLabels
+        Every label of a settled item is the decision; items that cannot be coded have none.
+    """
+    decision_of_item = np.full(labels.n_items, _UNTOUCHED, dtype=np.int64)
+    decision_of_item[np.asarray(item_index, dtype=np.int64)] = decided
+    decision = decision_of_item[labels.item_index]
+    return CodedLabels(
+        labels.item_index,
+        np.where(decision >= 0, decision, labels.value_index),
+        labels.coder_index,
+        n_items=labels.n_items,
+        n_values=n_values,
+        n_coders=labels.n_coders,
+    ).where(decision != CANNOT_BE_CODED)
 
 
 def _figures(base: Base, observed: FloatArray, expected: FloatArray) -> SettledFigures:

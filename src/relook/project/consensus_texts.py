@@ -41,9 +41,7 @@ def consensus_text(
     return str(consensus_texts(held, consensus, np.array([profile]))[0]), ()
 
 
-def consensus_texts(
-    held: VariableLabels, consensus: Consensus, profiles: IntArray
-) -> Texts:
+def consensus_texts(held: VariableLabels, consensus: Consensus, profiles: IntArray) -> Texts:
     """Return the consensus label of each profile; tied labels with " | " between.
 
     Parameters

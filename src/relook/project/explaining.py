@@ -31,9 +31,9 @@ FORMULAS = {
     "circular": "δ² = sin²(180° × (c − k)/{period})",
     "polar": "δ² = (c − k)²/((c + k − 2 × {low})(2 × {high} − c − k))",
     "jaccard": "δ² = 1 − shared elements/all elements of the two sets",
-    "masi": "δ² = 1 − J × M: J = shared/all elements; M = 1 if equal, 2/3 if one set lies inside the "
-    "other, 1/3 if they overlap, 0 if they share nothing",
-    "tree": 'δ² = 1 − 2 × shared levels/(levels of one + levels of the other), levels parted by '
+    "masi": "δ² = 1 − J × M: J = shared/all elements; M = 1 if equal, 2/3 if one set lies inside "
+    "the other, 1/3 if they overlap, 0 if they share nothing",
+    "tree": "δ² = 1 − 2 × shared levels/(levels of one + levels of the other), levels parted by "
     '"{separator}"',
     "table": "δ² as given in the table of differences",
 }
@@ -297,7 +297,7 @@ def _doubt_of(doubt: Doubt, item: int) -> float | None:
 def _candidates(
     held: VariableLabels, agreement: Agreement, consensus: Consensus, profile: int
 ) -> tuple[Candidate, ...]:
-    """Every label the item could be settled to: those in the list, or those given and their mean."""
+    """Every label that the item could be settled to: of the list, or those given and their mean."""
     profiles = agreement.profiles
     if int(profiles.size[profile]) < 2 or agreement.alpha is None:
         return ()

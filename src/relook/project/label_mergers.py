@@ -193,9 +193,13 @@ def _merge(held: VariableLabels, agreement: Agreement, groups: Sequence[MergeGro
             variable=name, groups=tuple(groups), agreement=None, not_merged_because=because
         )
     codes = [[held.texts.index(label) for label in group.labels] for group in groups]
+    try:
+        after = merged_agreement(agreement, codes)[0]
+    except RelookError as error:
+        raise RelookError(f"{name}: {error.message}", mend=error.mend) from None
     return MergedScore(
         variable=name,
         groups=tuple(groups),
-        agreement=merged_agreement(agreement, codes)[0],
+        agreement=after,
         not_merged_because=None,
     )

@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Sequence
 from dataclasses import dataclass
+from pathlib import Path
 
 import numpy as np
 import numpy.typing as npt
@@ -13,8 +14,9 @@ import pandas as pd
 from relook.core.agreement import Agreement, measure_agreement
 from relook.core.differences import difference_function
 from relook.core.exact import IntArray
-from relook.errors import Problem
+from relook.errors import Place, Problem, RelookError
 from relook.project.folder import Project
+from relook.project.settings import SETTINGS_FILE
 from relook.tables.items import ItemData, read_items
 from relook.tables.labels import LabelData, VariableLabels, read_labels
 from relook.tables.schema import Variable
@@ -85,6 +87,26 @@ def measure(held: VariableLabels) -> Agreement:
     variable: Variable = held.variable
     function = difference_function(variable.difference, variable.options)
     return measure_agreement(held.labels, function, held.values, tolerance=variable.tolerance)
+
+
+def refuse_source(loaded: Loaded, file: Path) -> None:
+    """Refuse to write where the project's own tables or settings lie, whatever is forced.
+
+    Raises
+    ------
+    RelookError
+        The file is one that relook reads.
+    """
+    project = loaded.project
+    read = [*loaded.labels.digests, *(loaded.items.digests if loaded.items is not None else ())]
+    if project.settings.project:
+        read.append(SETTINGS_FILE)
+    if file.resolve() in {(project.root / name).resolve() for name in read}:
+        raise RelookError(
+            "this file is one that relook reads",
+            where=Place(str(file)),
+            mend="choose another name for what is to be written",
+        )
 
 
 def item_texts(loaded: Loaded, column: str) -> Texts:

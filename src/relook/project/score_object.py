@@ -164,9 +164,7 @@ def warning_rows(score: Score) -> list[Row]:
     ]
     if score.changed_files:
         rows.append({"variable": None, "warning": changed_warning(score.changed_files)})
-    return rows + [
-        {"variable": None, "warning": str(problem)} for problem in score.loaded.problems
-    ]
+    return rows + [{"variable": None, "warning": str(problem)} for problem in score.loaded.problems]
 
 
 def variable_warnings(scored: VariableScore) -> list[str]:
@@ -178,7 +176,9 @@ def variable_warnings(scored: VariableScore) -> list[str]:
         warnings.append(scored.interval.warning)
     model = scored.doubt.model
     if model is not None and not model.converged:
-        warnings.append(f"the estimate of doubt had not settled after {model.steps:,} steps")
+        warnings.append(
+            f"the estimate of doubt, which breaks ties, had not settled after {model.steps:,} steps"
+        )
     return warnings
 
 
@@ -199,9 +199,7 @@ def _merged_row(merged: MergedScore) -> Row:
     after = merged.agreement
     return {
         "variable": merged.variable,
-        "groups": [
-            {"name": group.name, "labels": list(group.labels)} for group in merged.groups
-        ],
+        "groups": [{"name": group.name, "labels": list(group.labels)} for group in merged.groups],
         "alpha": None if after is None else after.alpha,
         "undefined_because": None if after is None else after.undefined_because,
         "observed_disagreement": None if after is None else after.observed_disagreement,

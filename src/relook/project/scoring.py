@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from relook.core.agreement import Agreement
+from relook.core.agreement import NOTHING_PAIRABLE, Agreement
 from relook.core.consensus import Consensus
 from relook.core.contributions import (
     PairParts,
@@ -26,6 +26,7 @@ from relook.core.resampling import CONFIDENCE_LEVEL, RESAMPLES, IntervalResult, 
 from relook.core.sample_size import needed_items
 from relook.core.settling import Prospect, prospect
 from relook.core.without_coder import WithoutCoder, alpha_without_coder
+from relook.errors import Place, RelookError
 from relook.project.consensus_texts import consensus_for
 from relook.project.independence import changed_since_first_round
 from relook.project.label_mergers import (
@@ -218,6 +219,24 @@ def score(
     )
 
 
+def refuse_nothing_pairable(score: Score) -> None:
+    """Refuse labels of which no variable has an item labelled twice.
+
+    Raises
+    ------
+    RelookError
+        There is nothing that agreement could be measured on.
+    """
+    if any(scored.agreement.n_pairable_labels for scored in score.variables):
+        return
+    raise RelookError(
+        f"nothing to compare: {NOTHING_PAIRABLE}",
+        where=Place(", ".join(score.loaded.labels.files)),
+        mend="alpha needs items that two coders or more labelled; check the columns of the items "
+        "and the coders",
+    )
+
+
 def _score_variable(
     loaded: Loaded,
     name: str,
@@ -244,7 +263,7 @@ def _score_variable(
             np.random.default_rng(seed),
             resamples=resamples,
             confidence_level=confidence_level,
-            cluster_of_item=_clusters(loaded),
+            cluster_of_item=clusters_of(loaded),
             seed=seed,
         ),
         clustered_by=None if source is None else source.resample_by,
@@ -274,7 +293,8 @@ def _left_out(agreement: Agreement) -> tuple[str | None, str | None]:
     return TOO_MANY_CODERS if too_long else None, TOO_MANY_PAIRS if too_many else None
 
 
-def _clusters(loaded: Loaded) -> IntArray | None:
+def clusters_of(loaded: Loaded) -> IntArray | None:
+    """Return the cluster of each item where the settings name a column to resample by."""
     source = loaded.project.settings.items
     if loaded.items is None or source is None or source.resample_by is None:
         return None

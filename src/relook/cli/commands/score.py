@@ -30,6 +30,14 @@ def score(
     target: TargetArgument = Path(),
     variable: VariableOption = None,
     difference: DifferenceOption = None,
+    merge: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--merge",
+            metavar="NEW=A,B",
+            help="Show alpha with labels A and B taken as one; may be repeated.",
+        ),
+    ] = None,
     rank_by: RankByOption = None,
     top: TopOption = None,
     share: ShareOption = None,
@@ -40,11 +48,12 @@ def score(
         typer.Option("--items", metavar="FILE.csv", help="Write a row per disputed item."),
     ] = None,
     require: Annotated[
-        float | None,
+        str | None,
         typer.Option(
             "--require",
             metavar="ALPHA",
-            help="Exit with 1 where alpha of independent labels is undefined or lower.",
+            help="Exit with 1 where alpha of independent labels is undefined or lower; "
+            "`bar` takes it from relook.toml.",
         ),
     ] = None,
     seed: SeedOption = None,
@@ -59,16 +68,17 @@ def score(
         from relook.cli.targets import open_target
         from relook.project import scoring
         from relook.project.folder import write_whole
-        from relook.project.item_table import item_table, item_table_csv
-        from relook.project.loading import load
+        from relook.project.item_table import item_table
+        from relook.project.label_mergers import parse_merge_group
+        from relook.project.loading import load, refuse_source
         from relook.project.ordering import DEFAULT_SEED, settings_of_queue
-        from relook.project.score_tables import score_object
+        from relook.project.requiring import refuse_changed_labels, required_alpha, shortfalls
+        from relook.project.score_object import changed_warning, score_object
+        from relook.tables.results import csv_bytes
 
+        groups = [parse_merge_group(text) for text in merge or []]
         project = open_target(target, terminal, difference=difference)
-        loaded = load(project, only=variable)
-        for line in loaded.said:
-            terminal.say(line)
-        terminal.problems(loaded.problems)
+        bar = None if require is None else required_alpha(require, project.settings)
         overrides: dict[str, Any] = {
             "rank_by": rank_by,
             "top": top,
@@ -76,28 +86,32 @@ def score(
             "hours": hours,
             "seconds_per_item": seconds_per_item,
         }
+        queue = settings_of_queue(project.settings.queue, overrides)
+        loaded = load(project, only=variable)
+        for line in loaded.said:
+            terminal.say(line)
+        terminal.problems(loaded.problems)
         scored = scoring.score(
-            loaded,
-            settings_of_queue(project.settings.queue, overrides),
-            seed=DEFAULT_SEED if seed is None else seed,
-            with_doubt=items is not None,
+            loaded, queue, seed=DEFAULT_SEED if seed is None else seed, merge=groups
         )
+        if scored.changed_files:
+            terminal.warn(changed_warning(scored.changed_files))
         if items is not None:
-            write_whole(items, item_table_csv(item_table(scored)), force=force)
+            refuse_source(loaded, items)
+            write_whole(items, csv_bytes(item_table(scored)), force=force)
             terminal.say(f"wrote {items}")
+            for held in scored.variables:
+                if held.doubt.undefined_because and held.agreement.n_disputed_items:
+                    terminal.say(f"{held.name}: no doubt, because {held.doubt.undefined_because}")
         if as_json:
             terminal.json(score_object(scored))
         else:
             terminal.data(score_screen(scored))
-        bar = require if require is not None else None
+        scoring.refuse_nothing_pairable(scored)
         if bar is not None:
-            below = [
-                held.name
-                for held in scored.variables
-                if held.agreement.alpha is None or held.agreement.alpha < bar
-            ]
+            refuse_changed_labels(scored)
+            below = shortfalls(scored, bar)
+            for said in below:
+                terminal.warn(said)
             if below:
-                terminal.warn(f"alpha is below {bar:g} or undefined: {', '.join(below)}")
                 raise typer.Exit(int(ExitCode.FALLS_SHORT))
-        if all(not held.agreement.n_pairable_labels for held in scored.variables):
-            raise typer.Exit(int(ExitCode.COULD_NOT))

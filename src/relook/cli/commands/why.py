@@ -30,16 +30,18 @@ def why(
 ) -> None:
     """Show the arithmetic of one item: its pairs of labels, its contribution, settling."""
     with running(quiet=quiet, debug=debug) as terminal:
-        from dataclasses import asdict
-
         from relook.cli.screens.why import why_screen
         from relook.cli.targets import open_target
-        from relook.project.explaining import explain
+        from relook.project.explaining import explain, why_object
         from relook.project.loading import load
 
         project = open_target(target, terminal, difference=difference)
-        explanations = explain(load(project, only=variable), item)
+        loaded = load(project, only=variable)
+        for line in loaded.said:
+            terminal.say(line)
+        terminal.problems(loaded.problems)
+        explanations = explain(loaded, item)
         if as_json:
-            terminal.json({"item": item, "variables": [asdict(held) for held in explanations]})
+            terminal.json(why_object(item, explanations))
         else:
             terminal.data(why_screen(explanations))

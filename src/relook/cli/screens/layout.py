@@ -68,7 +68,7 @@ def figure_lines(lines: Iterable[tuple[str, str, str]]) -> Padding:
 
 def coefficient(value: float | None) -> str:
     """Alpha or agreement to three decimals, as in the literature."""
-    return UNDEFINED if value is None else f"{value:.3f}"
+    return UNDEFINED if value is None else f"{value:z.3f}"
 
 
 def amount(value: float | None) -> str:
