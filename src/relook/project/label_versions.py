@@ -16,6 +16,7 @@ from typing import Any
 
 from relook.errors import Place, RelookError, listed
 from relook.project.folder import Project, write_whole
+from relook.tables.reading import find_files
 
 FORMAT = 1
 FOLDER = "label_versions"
@@ -128,8 +129,8 @@ def reading_tables(project: Project, tables: Sequence[Path]) -> Project:
     if project.settings.labels.coder_from == "file":
         given = {file.stem for file in files}
         files += [
-            project.root / file
-            for file in project.settings.labels.files
+            file
+            for file in find_files(project.settings.labels.files, project.root)
             if file.stem not in given
         ]
     return _reading(project, files)

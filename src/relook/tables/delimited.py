@@ -11,7 +11,7 @@ from __future__ import annotations
 import csv
 import io
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -40,12 +40,15 @@ class Cells:
         The row of the spreadsheet that each row of `frame` stood in.
     said : str
         How the table was read.
+    delimiter : str or None
+        Of delimited text.
     """
 
     header: tuple[str, ...]
     frame: pd.DataFrame
     rows: IntArray
     said: str
+    delimiter: str | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -114,7 +117,7 @@ def read_delimited(data: bytes, file: str, delimiter: str | None = None) -> Cell
     said = f"delimiter {_NAMES.get(shape.delimiter, shape.delimiter)}"
     if shape.width == 1 and delimiter is None:
         said = "one column"
-    return drop_blank(Cells(header, frame, rows, said))
+    return drop_blank(Cells(header, frame, rows, said, shape.delimiter))
 
 
 def drop_blank(cells: Cells) -> Cells:
@@ -127,9 +130,9 @@ def drop_blank(cells: Cells) -> Cells:
         at = np.flatnonzero(blank)
         blank[at] = (frame[column].iloc[at].str.strip() == "").to_numpy(dtype=bool)
     if not blank.any():
-        return Cells(cells.header, frame.reset_index(drop=True), cells.rows, cells.said)
+        return replace(cells, frame=frame.reset_index(drop=True))
     keep = ~blank
-    return Cells(cells.header, frame[keep].reset_index(drop=True), cells.rows[keep], cells.said)
+    return replace(cells, frame=frame[keep].reset_index(drop=True), rows=cells.rows[keep])
 
 
 def frame_of_text(records: Sequence[Sequence[str]], width: int) -> pd.DataFrame:

@@ -59,6 +59,8 @@ class Table:
         One line on how the file was read.
     faults : tuple of CellFault
         Cells without a text of their own; only those in columns that are used matter.
+    delimiter : str or None
+        Of delimited text.
     """
 
     file: str
@@ -69,6 +71,7 @@ class Table:
     digest: str
     said: str
     faults: tuple[CellFault, ...] = ()
+    delimiter: str | None = None
 
     @property
     def n_rows(self) -> int:
@@ -174,7 +177,17 @@ def table_from_bytes(
             mend="leave the sheet out",
         )
     said = f"{file}: {', '.join(how)}, {counted(len(cells.frame), 'row')}"
-    return Table(file, title, cells.header, cells.frame, cells.rows, digest, said, faults)
+    return Table(
+        file,
+        title,
+        cells.header,
+        cells.frame,
+        cells.rows,
+        digest,
+        said,
+        faults,
+        cells.delimiter,
+    )
 
 
 def _read_text(

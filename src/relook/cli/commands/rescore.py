@@ -60,10 +60,12 @@ def rescore(
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.rescore import rescore_screen
         from relook.project import rescoring
-        from relook.project.folder import Project
+        from relook.project.folder import Project, write_whole
         from relook.project.loading import load
         from relook.project.ordering import DEFAULT_SEED
+        from relook.project.rescore_report import report_of
         from relook.project.rescore_tables import rescore_object
+        from relook.worksheet.report import write_report
 
         opened = Project.open(project)
         loaded = load(opened, only=variable)
@@ -76,6 +78,13 @@ def rescore(
         held = rescoring.rescore(
             loaded, seed=DEFAULT_SEED if seed is None else seed, relabelled=relabelled
         )
+        if xlsx is not None:
+            data = write_report(
+                report_of(held, terminal.now().isoformat(timespec="seconds"))
+            )
+            if not dry_run:
+                write_whole(xlsx, data, force=force)
+            terminal.say(f"{'would write' if dry_run else 'wrote'} {xlsx}")
         if as_json:
             terminal.json(rescore_object(held))
         else:
