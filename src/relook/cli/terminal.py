@@ -35,8 +35,8 @@ class Terminal:
         self, stdout: IO[str] | None = None, stderr: IO[str] | None = None, *, quiet: bool = False
     ) -> None:
         self.quiet = quiet
-        self.out = _console(stdout or sys.stdout)
-        self.err = _console(stderr or sys.stderr)
+        self.out = _console(_writable(stdout or sys.stdout))
+        self.err = _console(_writable(stderr or sys.stderr))
 
     def data(self, thing: Any) -> None:
         """Write something to stdout: a text, or anything that rich can lay out.
@@ -50,7 +50,12 @@ class Terminal:
 
     def json(self, held: dict[str, Any]) -> None:
         """Write one JSON object to stdout, numbers in full and undefined ones as null."""
-        text = json.dumps({"format": 1, **held}, ensure_ascii=False, allow_nan=False, indent=1)
+        text = json.dumps(
+            {"format": 1, **held},
+            ensure_ascii=not _is_unicode(self.out.file),
+            allow_nan=False,
+            indent=1,
+        )
         self.out.file.write(text + "\n")
 
     def say(self, text: str) -> None:
@@ -119,6 +124,28 @@ class _PipeConsole(Console):
     def on_broken_pipe(self) -> None:
         """Raise what happened; rich itself would exit with 1, which means something else here."""
         raise BrokenPipeError
+
+
+def _is_unicode(file: IO[str]) -> bool:
+    """Whether every character can be written; a stream without an encoding takes any."""
+    encoding = getattr(file, "encoding", None) or "utf-8"
+    return encoding.lower().replace("-", "").startswith("utf")
+
+
+def _writable(file: IO[str]) -> IO[str]:
+    """Let a stream take every character, so that no label is lost and no bar ends in an error.
+
+    A file or pipe gets UTF-8, unless PYTHONIOENCODING asks for another encoding; there, and on a
+    terminal of few characters, the others are written as escapes.
+    """
+    reconfigure = getattr(file, "reconfigure", None)
+    if reconfigure is None or _is_unicode(file):
+        return file
+    if file.isatty() or "PYTHONIOENCODING" in os.environ:
+        reconfigure(errors="backslashreplace")
+    else:
+        reconfigure(encoding="utf-8")
+    return file
 
 
 def _console(file: IO[str]) -> Console:

@@ -61,7 +61,8 @@ class Selection:
         said = f"{self.n_items:,} of {ranking.n_items:,} disputed items"
         if self.share is not None:
             of = "disagreement" if len(ranking.variables) == 1 else "chance-scaled disagreement"
-            said += f", {self.share:.0%} of the {of}"
+            share = f"{self.share:.0%}" if self.share >= 0.005 else "less than 1%"
+            said += f", {share} of the {of}"
         said += {
             "top": "; the number asked for bound",
             "share": "; the share asked for bound",

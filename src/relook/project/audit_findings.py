@@ -213,4 +213,6 @@ def _stratum(name: str) -> Stratum:
     for stratum in STRATA:
         if stratum == name:
             return stratum
-    raise RelookError(f'a round names the stratum "{name}", which this relook does not know')
+    raise RelookError(
+        f'a round names the stratum "{name}", which this relook does not know', mend="update relook"
+    )

@@ -144,7 +144,7 @@ def with_decisions(
         Decisions that the variable's declaration does not allow.
     """
     wanted = list(dict.fromkeys(decisions))
-    written = {text: _as_written(held, text) for text in wanted}
+    written = {text: as_written(held, text) for text in wanted}
     added = [text for text in dict.fromkeys(written.values()) if text not in held.texts]
     if not added:
         code_of_text = {text: code for code, text in enumerate(held.texts)}
@@ -171,8 +171,8 @@ def with_decisions(
     return again, coded.texts, {text: code[written[text]] for text in wanted}
 
 
-def _as_written(held: VariableLabels, decision: str) -> str:
-    """A decided number with the table's decimal mark; anything else as it stands."""
+def as_written(held: VariableLabels, decision: str) -> str:
+    """Return a decided number with the table's decimal mark, anything else as it stands."""
     if decision in held.texts or held.variable.decimal == "." or not takes_numbers(held.variable):
         return decision
     return decision.replace(".", held.variable.decimal)

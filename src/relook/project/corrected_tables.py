@@ -13,15 +13,15 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import PurePosixPath
 
-from relook.project.corrected import Corrected
+from relook.project.corrected import Corrected, as_written
 from relook.project.loading import Loaded
 from relook.tables.reading import Table, find_files, read_table
-from relook.tables.schema import LabelSource
 
 FOLDER = "corrected"
 #: Why there are no corrected tables for a table of counts.
 COUNTS_NOTE = (
-    "A table of counts holds no labels of single coders to correct, so there is no corrected table: "
+    "A table of counts holds no labels of single coders to correct, so there is no corrected "
+    "table: "
     "use final_labels.csv."
 )
 
@@ -148,7 +148,7 @@ def _repeats(
             if coders is not None and coders[at] in left_out:
                 continue
             label = decided[items[at]]
-            text = label if label is not None else next(iter(source.missing), "")
+            text = next(iter(source.missing), "") if label is None else as_written(labels, label)
             if (row, column) not in known and text != texts[at]:
                 found[row, column] = text
     return found

@@ -12,12 +12,13 @@ from relook.core.agreement import Agreement
 from relook.core.consensus import Consensus, extend_values
 from relook.core.contributions import alpha_costs, item_contributions, shares
 from relook.core.differences import doubled_midranks
-from relook.core.doubt import Doubt, estimate_doubt
+from relook.core.doubt import Doubt
 from relook.core.exact import IntArray
 from relook.core.settling import settled_alphas
 from relook.errors import RelookError, nearest
 from relook.project.consensus_texts import consensus_for, consensus_text
 from relook.project.loading import Loaded, labels_of_item, shown_texts
+from relook.project.ordering import doubt_of
 from relook.tables.labels import VariableLabels
 from relook.tables.numbers import plain_number
 from relook.tables.schema import Variable
@@ -212,7 +213,7 @@ def _explain(loaded: Loaded, name: str, item: int) -> Explanation:
     observed = agreement.observed_disagreement
     consensus = consensus_for(agreement)
     text, tied = consensus_text(held, consensus, profile)
-    doubt = estimate_doubt(agreement, consensus)
+    doubt = doubt_of(agreement)
     pairs = _pairs(held, agreement, profile)
     return Explanation(
         item=str(loaded.labels.items[item]),

@@ -20,6 +20,7 @@ from relook.core.agreement import Agreement
 from relook.core.consensus import Consensus
 from relook.core.decisions import Settlement
 from relook.project.consensus_texts import consensus_for, consensus_text
+from relook.project.corrected import as_written
 from relook.project.loading import Loaded
 from relook.tables.labels import VariableLabels
 from relook.worksheet.model import CANNOT_BE_CODED
@@ -137,7 +138,7 @@ def _of_variable(
         said = coders.get(profile)
         if said is None:
             said = coders[profile] = _coders(held, agreement, consensus, profile)
-        label = _final(str(item), name, said, settled.get((item, name)))
+        label = _final(str(item), held, said, settled.get((item, name)))
         if ties != "blank" and label.candidates and not label.label:
             label = _by_rule(label, said, ties, standing, key)
         found.append(label)
@@ -177,13 +178,15 @@ def _coders(
         for value, n in zip(profiles.value_index[entries], profiles.count[entries], strict=True)
     }
     text, tied = consensus_text(held, consensus, profile)
-    return _Coders(counts, text or "", tied)
+    return _Coders(counts, as_written(held, text or ""), tied)
 
 
-def _final(item: str, name: str, said: _Coders, settlement: Settlement | None) -> FinalLabel:
+def _final(
+    item: str, held: VariableLabels, said: _Coders, settlement: Settlement | None
+) -> FinalLabel:
     plain = FinalLabel(
         item=item,
-        variable=name,
+        variable=held.variable.name,
         label=said.consensus,
         settled_by=said.settled_by,
         support=said.counts.get(said.consensus, 0),
@@ -203,14 +206,16 @@ def _final(item: str, name: str, said: _Coders, settlement: Settlement | None) -
         adjudicators=tuple(each.adjudicator for each in rulings),
     )
     if settlement.state == "unconfirmed":
-        waiting = settlement.proposed or CANNOT_BE_CODED
+        waiting = as_written(held, settlement.proposed or CANNOT_BE_CODED)
         return replace(ruled, settled_by="unconfirmed", candidates=(waiting,))
     if settlement.state == "split":
-        rulings_by_label = dict.fromkeys(each.label or CANNOT_BE_CODED for each in rulings)
+        rulings_by_label = dict.fromkeys(
+            as_written(held, each.label or CANNOT_BE_CODED) for each in rulings
+        )
         return replace(
             ruled, label="", settled_by="split", support=0, candidates=tuple(rulings_by_label)
         )
-    label = settlement.label or ""
+    label = as_written(held, settlement.label or "")
     return replace(
         ruled,
         label=label,

@@ -1,16 +1,17 @@
-"""A few sentences for a methods section: every figure with its conditions, every rule its source."""
+"""Sentences for a methods section: every figure with its conditions, every rule its source."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 from relook import __version__
+from relook.core.agreement import Agreement
+from relook.core.resampling import Interval, IntervalResult
 from relook.project.audit_findings import AuditFindings
 from relook.project.final_labels import FinalLabel, counts_of
 from relook.project.label_versions import LabelVersion
 from relook.project.loading import Loaded
 from relook.project.rescoring import Rescore, VariableRescore
-from relook.project.scoring import VariableScore
 
 _SOURCES = {
     "alpha": "Krippendorff, K. (2004). Content Analysis: An Introduction to Its Methodology, 2nd "
@@ -19,15 +20,20 @@ _SOURCES = {
     "reliability for nominal data. BMC Medical Research Methodology 16:93.",
     "audit": "Begg, C. B. & Greenes, R. A. (1983). Assessment of diagnostic tests when disease "
     "verification is subject to selection bias. Biometrics 39:207-215.",
-    "weighted": "Zou, G. Y., Huang, W. & Zhang, X. (2009). A note on confidence interval estimation "
+    "weighted": "Zou, G. Y., Huang, W. & Zhang, X. (2009). A note on confidence interval "
+    "estimation "
     "for a linear function of binomial proportions. Computational Statistics & Data Analysis "
     "53:1080-1085.",
-    "masi": "Passonneau, R. (2006). Measuring agreement on set-valued items (MASI) for semantic and "
+    "doubt": "Dawid, A. P. & Skene, A. M. (1979). Maximum likelihood estimation of observer "
+    "error-rates using the EM algorithm. Applied Statistics 28:20-28.",
+    "masi": "Passonneau, R. (2006). Measuring agreement on set-valued items (MASI) for semantic "
+    "and "
     "pragmatic annotation. LREC.",
     "tree": "Wu, Z. & Palmer, M. (1994). Verbs semantics and lexical selection. ACL.",
 }
 _CONSENSUS = {
-    "identity": "the label most coders gave",
+    "identity": "the label that more of its coders gave than any other",
+    "text": "the label that more of its coders gave than any other",
     "order": "the median label",
     "number": "the mean of its labels",
 }
@@ -40,89 +46,103 @@ _REVEALED = {
 
 
 def methods_statement(
-    loaded: Loaded,
+    first: Loaded,
+    released: Loaded,
     rescored: Rescore | None,
-    scored: Sequence[VariableScore],
+    intervals: Mapping[str, IntervalResult],
     finals: Sequence[FinalLabel],
     *,
     ties: str,
+    independent: bool | None,
     version: LabelVersion | None = None,
 ) -> str:
     """Return the statement, a paragraph per variable, then the sources.
 
     Parameters
     ----------
-    loaded : Loaded
-        With the labels that are released.
+    first : Loaded
+        With the labels as first given.
+    released : Loaded
+        With the labels that are released: the same, or a label version.
     rescored : Rescore or None
-        Of the labels as first given; None where there are no decisions.
-    scored : sequence of VariableScore
-        Of the labels as first given.
+        Of the labels that are released; None where there are no decisions.
+    intervals : mapping of str to IntervalResult
+        Of alpha of the labels as first given, by variable.
     finals : sequence of FinalLabel
     ties : str
         The rule that was asked for.
+    independent : bool or None
+        Whether `first` holds the label files of the first round; None where no round was sent.
     version : LabelVersion or None
         Where labels that coders corrected themselves are released.
     """
     used = ["alpha"]
     paragraphs = []
-    for held in scored:
+    for name, agreement in first.agreements.items():
         again = None
         if rescored is not None:
-            again = next(each for each in rescored.variables if each.name == held.name)
-        said = [_labels(held, loaded), _alpha(held, rescored)]
-        if held.interval.interval is not None:
-            used.append("interval")
-        used += [name for name in ("masi", "tree") if held.agreement.function.name == name]
+            again = next(each for each in rescored.variables if each.name == name)
+        interval = intervals[name].interval
+        said = [
+            _labels(name, agreement, first),
+            _alpha(name, agreement, interval, first, independent),
+        ]
+        used += ["interval"] if interval is not None else []
+        used += [each for each in ("masi", "tree") if agreement.function.name == each]
         if version is not None:
-            said.append(_self_corrected(held.name, version, loaded))
+            said.append(_self_corrected(name, version, released))
         if again is not None and rescored is not None:
             said += _decisions(again, rescored)
+            ranks = {held.settings.get("rank_by") for held in rescored.rounds}
+            used += ["doubt"] if "doubt" in ranks else []
             if again.audits:
                 said.append(_audit(again.audits[0]))
                 used += ["audit", "weighted"]
-        said.append(_released(held, finals, ties))
+        said.append(_released(name, released, finals, ties))
         paragraphs.append(" ".join(each for each in said if each))
     sources = [_SOURCES[name] for name in dict.fromkeys(used)]
     closing = f"Figures were computed with relook {__version__}."
     return "\n\n".join([*paragraphs, closing, "Sources", *sources]) + "\n"
 
 
-def _labels(held: VariableScore, loaded: Loaded) -> str:
-    agreement = held.agreement
+def _labels(name: str, agreement: Agreement, first: Loaded) -> str:
     by = f" by {agreement.n_coders:,} coders" if agreement.n_coders else ""
-    left = loaded.labels.left_out
-    without = f" ({len(left):,} coders left out)" if left else ""
+    left = first.labels.left_out
+    without = f" ({len(left):,} more left out)" if left else ""
     return (
-        f'On "{held.name}", {agreement.n_items:,} items were given {agreement.n_labels:,} '
-        f"labels{by}{without}; {agreement.n_pairable_items:,} items have two labels or more, and "
-        f"coders differ on {agreement.n_disputed_items:,} of them."
+        f'On "{name}", {agreement.n_items:,} items were given {agreement.n_labels:,} labels{by}'
+        f"{without}; {agreement.n_pairable_items:,} items have two labels or more, and coders "
+        f"differ on {agreement.n_disputed_items:,} of them."
     )
 
 
-def _alpha(held: VariableScore, rescored: Rescore | None) -> str:
-    agreement, result = held.agreement, held.interval
-    function = held.held.variable.difference
-    which = "of the labels"
-    if rescored is None or rescored.independent:
-        which = "of the labels as coders first gave them"
-    elif rescored.changed_files:
-        which = (
-            "of the labels, which were changed after the first round of second looks was sent and "
-            "are not independent,"
-        )
+def _alpha(
+    name: str,
+    agreement: Agreement,
+    interval: Interval | None,
+    first: Loaded,
+    independent: bool | None,
+) -> str:
+    which = {
+        True: "of the labels that coders made independently",
+        False: "of the labels, which changed after the first round of second looks was sent and "
+        "are "
+        "not independent,",
+        None: "of the labels",
+    }[independent]
     if agreement.alpha is None:
         return f"Krippendorff's alpha {which} is undefined: {agreement.undefined_because}."
+    function = first.labels.variables[name].variable.difference
     said = (
         f"Krippendorff's alpha {which} ({function} differences) is {agreement.alpha:.3f} (observed "
-        f"disagreement {agreement.observed_disagreement:.4g}, expected "
-        f"{agreement.expected_disagreement:.4g}; Krippendorff 2004"
+        f"disagreement {_amount(agreement.observed_disagreement)}, expected "
+        f"{_amount(agreement.expected_disagreement)}; Krippendorff 2004"
     )
-    if result.interval is not None:
-        interval = result.interval
+    if interval is not None:
         said += (
             f"; {interval.confidence_level:.0%} interval {interval.low:.3f} to "
-            f"{interval.high:.3f} from {interval.resamples:,} resamples of items with their labels, "
+            f"{interval.high:.3f} from {interval.resamples:,} resamples of items with their "
+            "labels, "
             f"seed {interval.seed}, Zapf et al. 2016"
         )
     return f"{said})."
@@ -141,25 +161,29 @@ def _self_corrected(name: str, version: LabelVersion, loaded: Loaded) -> str:
 
 
 def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
-    people = {
-        decision.adjudicator
-        for each in held.corrected.settled
-        for decision in each.standing
-    }
     reveal = {str(each.settings.get("reveal", "labels")) for each in rescored.rounds}
     shown = ""
     if len(reveal) == 1:
         shown = f", {_REVEALED[reveal.pop()]}" if reveal <= _REVEALED.keys() else ""
     states, after = held.states, held.corrected.after
-    said = [
-        f"{len(people):,} adjudicator{'s' if len(people) != 1 else ''} ruled on items chosen by "
-        f"their contribution to the disagreement and on a random audit{shown}: "
-        f"{states['settled']:,} items were settled, {states['cannot be coded']:,} found impossible "
-        f"to code, {states['split']:,} remained split, and {states['unconfirmed']:,} rulings "
-        "against unanimous coders were not confirmed by a second adjudicator and not applied."
+    audit = " and on a random audit" if held.audits else ""
+    ways = [
+        f"{_counted(states['settled'], 'item was', 'items were')} settled",
+        f"{states['cannot be coded']:,} found impossible to code",
+        f"{states['split']:,} remained split",
     ]
-    if not held.audits:
-        said[0] = said[0].replace(" and on a random audit", "")
+    said = [
+        (
+            f"{_counted(held.n_adjudicators, 'adjudicator', 'adjudicators')} ruled on items chosen "
+            f"by {_chosen(rescored)}{audit}{shown}: {', '.join(ways)}."
+        )
+    ]
+    if states["unconfirmed"]:
+        verb = "was" if states["unconfirmed"] == 1 else "were"
+        said.append(
+            f"{_counted(states['unconfirmed'], 'ruling', 'rulings')} against unanimous coders "
+            f"{verb} not confirmed by a second adjudicator and not applied."
+        )
     if after.agreement is not None:
         said.append(
             f"With the decisions put in, agreement in the corrected data is {after.agreement:.3f}; "
@@ -168,17 +192,35 @@ def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
     if rescored.stale:
         own = [each for each in rescored.stale if each.decision.variable == held.name]
         if own:
-            said.append(f"{len(own):,} decisions were made on labels that changed since.")
+            said.append(
+                f"{_counted(len(own), 'decision was', 'decisions were')} made on labels that "
+                "changed since."
+            )
     return said
+
+
+def _chosen(rescored: Rescore) -> str:
+    """By what the rounds ranked items, in words."""
+    words = {
+        "contribution": "their contribution to the disagreement",
+        "doubt": "the estimated probability that their consensus label is wrong (Dawid & Skene "
+        "1979)",
+        "intensity": "the mean difference between two of their labels",
+    }
+    used = dict.fromkeys(
+        str(held.settings.get("rank_by", "contribution")) for held in rescored.rounds
+    )
+    return " and ".join(words[each] for each in used if each in words) or "the lead"
 
 
 def _audit(held: AuditFindings) -> str:
     result = held.result
     ruled = sum(part.n_ruled for part in result.strata)
     otherwise = sum(part.n_otherwise for part in result.strata)
+    verb = "was" if otherwise == 1 else "were"
     said = (
         f"Of {ruled:,} audit items drawn at random within strata from those that would be released "
-        f"without a decision, {otherwise:,} were ruled otherwise"
+        f"without a decision, {otherwise:,} {verb} ruled otherwise"
     )
     if result.share_ruled_otherwise is None:
         return f"{said}; no share is estimated, as {result.undefined_because}."
@@ -191,27 +233,35 @@ def _audit(held: AuditFindings) -> str:
     )
 
 
-def _released(held: VariableScore, finals: Sequence[FinalLabel], ties: str) -> str:
-    own = [each for each in finals if each.variable == held.name]
-    counts = counts_of(own)
-    ways = ", ".join(f"{name} {n:,}" for name, n in counts.items() if n)
+def _released(name: str, released: Loaded, finals: Sequence[FinalLabel], ties: str) -> str:
+    own = [each for each in finals if each.variable == name]
+    ways = ", ".join(f"{way} {n:,}" for way, n in counts_of(own).items() if n)
     blank = sum(1 for each in own if not each.label)
     rule = {
         "blank": "Ties and splits are blank.",
         "most-used": "Ties and splits took the candidate label used most over all items.",
         "random": "Ties and splits took one of their candidate labels at random.",
     }[ties]
-    consensus = _consensus(held)
     return (
         f"Released are {len(own) - blank:,} final labels of {len(own):,} items ({ways}; {blank:,} "
-        f"blank). Without a decision an item's final label is {consensus}. {rule}"
+        f"blank). Without a decision an item's final label is {_consensus(released, name)}. {rule}"
     )
 
 
-def _consensus(held: VariableScore) -> str:
-    difference = held.held.variable.difference
+def _consensus(released: Loaded, name: str) -> str:
+    difference = released.labels.variables[name].variable.difference
     if difference in ("jaccard", "masi"):
         return "the set of the elements that more than half of its labels hold"
     if difference == "circular":
         return "the mean direction of its labels"
-    return _CONSENSUS[held.agreement.function.needs]
+    return _CONSENSUS[released.agreements[name].function.needs]
+
+
+def _counted(n: int, one: str, many: str) -> str:
+    return f"{n:,} {one if n == 1 else many}"
+
+
+def _amount(value: float | None) -> str:
+    if value is None:
+        return "undefined"
+    return f"{value:,.1f}" if abs(value) >= 1000 else f"{value:.4g}"

@@ -11,7 +11,7 @@ import numpy as np
 
 from relook.core.agreement import measure_agreement
 from relook.core.decisions import LEAD, Decision, Settlement, number_of
-from relook.core.exact import BoolArray
+from relook.core.exact import BoolArray, IntArray
 from relook.core.labels import CodedLabels
 from relook.core.proportions import wilson_interval
 from relook.core.settling import CANNOT_BE_CODED
@@ -131,12 +131,12 @@ def moves_of(corrected: Corrected) -> tuple[Move, ...]:
 _NONE = -2
 
 
-def _decision_of_label(corrected: Corrected) -> np.ndarray[tuple[int], np.dtype[np.int64]]:
+def _decision_of_label(corrected: Corrected) -> IntArray:
     """The decision on the item of each label, `_NONE` where there is none."""
     labels = corrected.given.labels
     decision = np.full(labels.n_items, _NONE, dtype=np.int64)
     decision[corrected.item_index] = corrected.decided
-    return decision[labels.item_index]
+    return np.asarray(decision[labels.item_index])
 
 
 def reasons_of(settled: Iterable[Settlement]) -> tuple[ReasonCount, ...]:
@@ -205,11 +205,7 @@ def coders_against_decisions(
     return tuple(sorted(found, key=lambda each: (each.coder, each.items)))
 
 
-def _same(
-    corrected: Corrected,
-    label: np.ndarray[tuple[int], np.dtype[np.int64]],
-    decision: np.ndarray[tuple[int], np.dtype[np.int64]],
-) -> BoolArray:
+def _same(corrected: Corrected, label: IntArray, decision: IntArray) -> BoolArray:
     """Whether label and decision are one value, or numbers within the tolerance of each other."""
     values, tolerance = corrected.given.values, corrected.variable.tolerance
     if values.numerators is None or not tolerance:
@@ -261,7 +257,8 @@ def overlap_of(
     ]
     per_item = Counter(row for row, _, _ in rulings)
     n_labelled = sum(1 for n in per_item.values() if n >= 2)
-    alpha, because = None, f"fewer than {LEAST_SHARED_ITEMS} shared items with labels"
+    alpha: float | None = None
+    because: str | None = f"fewer than {LEAST_SHARED_ITEMS} shared items with labels"
     if n_labelled >= LEAST_SHARED_ITEMS:
         alpha, because = _own_alpha(loaded, name, rulings, len(shared), len(people))
     return Overlap(

@@ -11,19 +11,25 @@ import numpy as np
 import pandas as pd
 
 from relook.core.agreement import Agreement
-from relook.core.doubt import Doubt, estimate_doubt
+from relook.core.doubt import Doubt, estimate_doubt, no_ground
 from relook.core.exact import BoolArray, FloatArray, IntArray
 from relook.core.ranking import RankBy, RankedVariable, Ranking, rank_items
 from relook.core.selection import Selection, select_head
 from relook.errors import RelookError, listed, nearest
 from relook.project.consensus_texts import consensus_for
 from relook.project.loading import Loaded, item_texts
-from relook.project.settings import QueueSettings
+from relook.project.settings import QueueSettings, Settings
 from relook.tables.numbers import parse_number
 from relook.tables.schema import Variable
 
 #: The seed where none is given: fixed, so that the same command gives the same result.
 DEFAULT_SEED = 1
+#: Labels × values above which doubt does not break ties: the time of a step grows with both.
+QUICK_DOUBT = 6_000_000
+NOT_ASKED = (
+    "it takes long with so many labels and values, and was not asked for by --rank-by doubt or "
+    "--items"
+)
 #: What items can be ranked by.
 ORDERS: tuple[RankBy, ...] = get_args(RankBy)
 
@@ -37,7 +43,8 @@ class Ordering:
     ranking : Ranking
     selection : Selection
     doubts : dict of str to Doubt
-        By variable: every order breaks its ties by doubt where there is ground for it.
+        By variable. Orders break their ties by doubt, where there is ground for it and it is not
+        too long to estimate for that alone.
     """
 
     ranking: Ranking
@@ -50,6 +57,7 @@ def order_items(
     queue: QueueSettings,
     *,
     seed: int,
+    with_doubt: bool = False,
     leave_out: Mapping[str, BoolArray] | None = None,
     n_audit_items: int = 0,
     overlap: float = 0.0,
@@ -62,6 +70,8 @@ def order_items(
     queue : QueueSettings
     seed : int
         Keys the last tie-break, a hash of the item's id.
+    with_doubt : bool
+        Estimate doubt however long it takes, as for a column of it. The order stays the same.
     leave_out : mapping of str to bool array of shape (n_items,), optional
         By variable: items that are settled or still out there.
     n_audit_items : int
@@ -73,14 +83,15 @@ def order_items(
     RelookError
         An order by doubt that no variable has ground for, with the reason of each.
     """
-    doubts = doubts_of(loaded)
-    if queue.rank_by == "doubt":
+    by_doubt = queue.rank_by == "doubt"
+    doubts = doubts_of(loaded, every=by_doubt or with_doubt)
+    if by_doubt:
         _refuse_order_by_doubt(doubts)
     variables = [
         ranked_variable(
             loaded.labels.variables[name].variable,
             agreement,
-            doubts[name],
+            doubts[name] if by_doubt or is_quick(agreement) else None,
             None if leave_out is None else leave_out[name],
         )
         for name, agreement in loaded.agreements.items()
@@ -117,12 +128,32 @@ def ranked_variable(
     )
 
 
-def doubts_of(loaded: Loaded) -> dict[str, Doubt]:
-    """Estimate doubt on each variable; one without ground for it says why."""
-    return {
-        name: estimate_doubt(agreement, consensus_for(agreement))
-        for name, agreement in loaded.agreements.items()
-    }
+def is_quick(agreement: Agreement) -> bool:
+    """Whether doubt is estimated within seconds, so that it may break ties unasked."""
+    used = np.count_nonzero(np.bincount(agreement.labels.value_index))
+    return int(used) * agreement.n_labels <= QUICK_DOUBT
+
+
+def doubts_of(loaded: Loaded, *, every: bool) -> dict[str, Doubt]:
+    """Estimate doubt on each variable; `every` and the reasons as in `doubt_of`."""
+    return {name: doubt_of(agreement, every=every) for name, agreement in loaded.agreements.items()}
+
+
+def doubt_of(agreement: Agreement, *, every: bool = False) -> Doubt:
+    """Estimate doubt; where there is no ground for it, the result says why.
+
+    Parameters
+    ----------
+    agreement : Agreement
+    every : bool
+        However long it takes.
+    """
+    because = no_ground(agreement)
+    if because is None and not every and not is_quick(agreement):
+        because = NOT_ASKED
+    if because is not None:
+        return Doubt(None, because, None, None)
+    return estimate_doubt(agreement, consensus_for(agreement))
 
 
 def _refuse_order_by_doubt(doubts: Mapping[str, Doubt]) -> None:
@@ -168,6 +199,15 @@ def groups_of(loaded: Loaded, column: str) -> tuple[IntArray, tuple[str, ...]]:
     """
     names, group = np.unique(item_texts(loaded, column).astype(str), return_inverse=True)
     return group, tuple(str(name) for name in names)
+
+
+def overlap_of(settings: Settings) -> float:
+    """Return the share of rows that a second adjudicator gets too.
+
+    One person cannot be two, so one adjudicator alone makes no overlap.
+    """
+    worksheet = settings.worksheet
+    return worksheet.overlap if len(worksheet.adjudicators) > 1 else 0.0
 
 
 def settings_of_queue(queue: QueueSettings, overrides: Mapping[str, object]) -> QueueSettings:

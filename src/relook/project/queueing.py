@@ -15,7 +15,7 @@ from relook.core.decisions import LEAD
 from relook.errors import ExitCode, RelookError, listed, nearest
 from relook.project.history import History
 from relook.project.loading import Loaded
-from relook.project.ordering import Ordering, order_items
+from relook.project.ordering import Ordering, order_items, overlap_of
 from relook.project.people import adjudicators_of
 from relook.project.round_items import (
     audit_items,
@@ -129,8 +129,7 @@ def plan_round(
         )
     left_out = left_out_items(loaded, history, again=request.again)
     n_audit = _n_audit(request, history)
-    # One person cannot be two, so one adjudicator alone makes no overlap.
-    overlap = settings.worksheet.overlap if len(settings.worksheet.adjudicators) > 1 else 0.0
+    overlap = overlap_of(settings)
     ordering = order_items(
         loaded,
         request.queue,

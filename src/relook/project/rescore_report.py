@@ -10,8 +10,6 @@ from relook.worksheet.overview_table import COUNT, PERCENT, TableColumn, Value
 from relook.worksheet.report import Report, ReportChart, ReportTable
 
 
-
-
 def report_of(held: Rescore, stamp: str) -> Report:
     """Return what `relook rescore --xlsx` writes.
 
@@ -49,7 +47,8 @@ def _figures(held: Rescore, scored: VariableRescore) -> list[Figure]:
     said = given.undefined_because or f"{given.n_pairable_items:,} items with two labels or more"
     if interval is not None:
         said += (
-            f"; {interval.confidence_level:.0%} interval {interval.low:.3f} to {interval.high:.3f}, "
+            f"; {interval.confidence_level:.0%} interval {interval.low:.3f} to "
+            f"{interval.high:.3f}, "
             f"{interval.resamples:,} resamples of items, seed {interval.seed}"
         )
     own = f"{after.n_settled:,} items settled, {after.n_cannot_be_coded:,} cannot be coded"

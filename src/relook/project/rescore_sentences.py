@@ -21,7 +21,8 @@ LEAST_SHARE_OF_A_REASON = 0.2
 #: What each of the reasons that relook.toml has by default allows to conclude. Reasons of one's own
 #: are counted, and nothing is concluded from them.
 CONCLUSIONS = {
-    "coder slip": "these were slips, which decisions mend; the instructions need no change for them",
+    "coder slip": "these were slips, which decisions mend; the instructions need no change for "
+    "them",
     "instructions unclear": "mend the instructions before coding more",
     "item ambiguous": "no instruction will settle these; say in the instructions what to do with "
     "items that allow two labels",
@@ -41,13 +42,15 @@ UNKNOWN_INDEPENDENCE = (
     "them. Alpha is a reliability only if they were made independently."
 )
 CORRECTED = (
-    "Agreement in the corrected data is what is left after decisions replaced labels. Decided items "
+    "Agreement in the corrected data is what is left after decisions replaced labels. Decided "
+    "items "
     "agree because they were decided, rightly or wrongly, so it is not a reliability, and its "
     "distance from alpha is not a gain in one. No interval is put on that distance. Only fresh, "
     "independent coding gives a new alpha."
 )
 DISPUTED_ONLY = (
-    "On disputed items somebody must differ from the decision, and they are the hardest: they alone "
+    "On disputed items somebody must differ from the decision, and they are the hardest: they "
+    "alone "
     "do not judge a person. Audit items were drawn at random."
 )
 
@@ -101,7 +104,8 @@ def unchanged_sentence(held: VariableRescore) -> str | None:
     if unconfirmed:
         said.append(
             f"{_counted(unconfirmed, 'ruling')} against unanimous coders "
-            f"{'waits' if unconfirmed == 1 else 'wait'} for a second adjudicator; the coders' label "
+            f"{'waits' if unconfirmed == 1 else 'wait'} for a second adjudicator; the coders' "
+            "label "
             "stands till then, since most such rulings may be slips of the adjudicator."
         )
     return " ".join(said) or None
@@ -116,7 +120,8 @@ def reason_sentences(reasons: tuple[ReasonCount, ...]) -> tuple[str, ...]:
     more and of 20 % or more. The thresholds are our choice; no source gives them.
     """
     said = [
-        f'"{each.reason}" in {each.n_items:,} of {each.n_with_reason:,}: {CONCLUSIONS[each.reason]}.'
+        f'"{each.reason}" in {each.n_items:,} of {each.n_with_reason:,}: '
+        f"{CONCLUSIONS[each.reason]}."
         for each in reasons
         if each.reason in CONCLUSIONS and allows_conclusion(each)
     ]
@@ -169,7 +174,8 @@ def audit_cautions(held: AuditFindings, n_sent_since: int) -> tuple[str, ...]:
     if held.n_ties:
         said.append(
             f"{_counted(held.n_ties, 'audit item')} whose labels tie "
-            f"{'counts' if held.n_ties == 1 else 'count'} as not ruled otherwise: ties are released "
+            f"{'counts' if held.n_ties == 1 else 'count'} as not ruled otherwise: ties are "
+            "released "
             "blank."
         )
     if n_sent_since:
@@ -179,7 +185,8 @@ def audit_cautions(held: AuditFindings, n_sent_since: int) -> tuple[str, ...]:
         )
     if any(part.n_otherwise for part in held.result.strata):
         said.append(
-            f"Adjudicators slip too: where {SLIP_EXAMPLE.true_share:.0%} of the items are wrong and "
+            f"Adjudicators slip too: where {SLIP_EXAMPLE.true_share:.0%} of the items are wrong "
+            "and "
             f"{SLIP_EXAMPLE.slip_rate:.0%} of the rulings are slips, an audit shows "
             f"{SLIP_EXAMPLE.share_shown:.1%}."
         )

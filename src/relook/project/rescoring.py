@@ -13,15 +13,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from relook.core.contributions import item_contributions, label_pair_parts
 from relook.core.decisions import Settlement
 from relook.core.resampling import CONFIDENCE_LEVEL, RESAMPLES, IntervalResult, alpha_interval
 from relook.core.settling import CANNOT_BE_CODED, agreement_after
-from relook.core.ties import tie_levels
-from relook.errors import ExitCode, Place, RelookError, listed
+from relook.errors import ExitCode, RelookError
 from relook.project.audit_findings import AuditFindings, audited_items, audits_of
 from relook.project.corrected import Corrected, correct
-from relook.project.independence import changed_since_first_round
 from relook.project.loading import Loaded, labels_digest, labels_of_item
 from relook.project.moves import (
     CoderStanding,
@@ -35,14 +32,15 @@ from relook.project.moves import (
 )
 from relook.project.record import Record, read_record, stale_decisions
 from relook.project.recorded import Recorded
+from relook.project.remaining import Remaining, RemainingPair, remaining_items, remaining_pairs
 from relook.project.rounds import Round, read_rounds
 from relook.project.scoring import clusters_of
 from relook.project.settlements import settlements, tolerances
+from relook.project.unchanged import check_independence
 
 STATES = ("settled", "cannot be coded", "split", "unconfirmed", "open")
 #: How often items are settled by one of their own labels, drawn at random, for comparison.
 DRAWS = 20
-MOST_REMAINING = 10
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -63,37 +61,6 @@ class AnyLabel:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Remaining:
-    """A disputed item without a decision: what still weighs most.
-
-    Attributes
-    ----------
-    item : str
-    contribution, share : float
-        Of the observed disagreement that is left.
-    labels : tuple of (coder, label)
-    state : str or None
-        "split" or "open" where it was ruled on, None where nobody has.
-    """
-
-    item: str
-    contribution: float
-    share: float
-    labels: tuple[tuple[str, str], ...]
-    state: str | None
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class RemainingPair:
-    """Two labels that still clash, their share of what is left, and in how many items."""
-
-    first: str
-    second: str
-    share: float
-    n_items: int
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
 class VariableRescore:
     """One variable before and after.
 
@@ -106,8 +73,8 @@ class VariableRescore:
         How many items stand how, every state of `STATES` among them.
     n_waiting : int
         Items that were sent and have no ruling yet.
-    n_queued : int
-        Items that were sent because they are disputed.
+    n_adjudicators : int
+        Who have a standing decision.
     any_label : AnyLabel or None
         None where nothing was settled or agreement is undefined.
     moves : tuple of Move
@@ -129,7 +96,7 @@ class VariableRescore:
     interval: IntervalResult
     states: dict[str, int]
     n_waiting: int
-    n_queued: int
+    n_adjudicators: int
     any_label: AnyLabel | None
     moves: tuple[Move, ...]
     reasons: tuple[ReasonCount, ...]
@@ -214,6 +181,39 @@ def rescore(
             exit_code=ExitCode.FALLS_SHORT,
         )
     changed = check_independence(loaded, rounds, relabelled=relabelled)
+    return rescore_labels(
+        loaded,
+        rounds,
+        record,
+        changed,
+        seed=seed,
+        resamples=resamples,
+        confidence_level=confidence_level,
+    )
+
+
+def rescore_labels(
+    loaded: Loaded,
+    rounds: Sequence[Round],
+    record: Record,
+    changed: tuple[str, ...],
+    *,
+    seed: int,
+    resamples: int = RESAMPLES,
+    confidence_level: float = CONFIDENCE_LEVEL,
+) -> Rescore:
+    """Compare labels before and after a record's decisions, whatever was checked before.
+
+    Parameters
+    ----------
+    loaded : Loaded
+    rounds : sequence of Round
+    record : Record
+    changed : tuple of str
+        As `check_independence` returned it.
+    seed, resamples, confidence_level
+        As for `rescore`.
+    """
     settled = settlements(loaded, record)
     stale, gone = _stale(loaded, record, settled)
     return Rescore(
@@ -241,7 +241,7 @@ def _variable(
 ) -> VariableRescore:
     corrected = correct(loaded, name, settled)
     own = {item: held for (item, variable), held in settled.items() if variable == name}
-    counts = Counter(held.state for held in own.values())
+    counts: Counter[str] = Counter(held.state for held in own.values())
     audited = audited_items(rounds, name)
     sent = {row.item for held in rounds for row in held.rows if row.variable == name}
     audits = audits_of(loaded, name, rounds, settled)
@@ -249,17 +249,12 @@ def _variable(
     tolerance = tolerances(loaded.project.settings).get(name)
     return VariableRescore(
         corrected=corrected,
-        interval=alpha_interval(
-            loaded.agreements[name],
-            np.random.default_rng(seed),
-            resamples=resamples,
-            confidence_level=confidence_level,
-            cluster_of_item=clusters_of(loaded),
-            seed=seed,
-        ),
+        interval=interval_of(loaded, name, seed, resamples, confidence_level),
         states={state: counts[state] for state in STATES},
         n_waiting=len(sent - own.keys()),
-        n_queued=len(sent - audited),
+        n_adjudicators=len(
+            {decision.adjudicator for held in own.values() for decision in held.standing}
+        ),
         any_label=_any_label(corrected, seed),
         moves=moves_of(corrected),
         reasons=reasons_of(held for item, held in own.items() if item not in audited),
@@ -267,12 +262,30 @@ def _variable(
         audits=audits,
         n_sent_since_audit=_sent_since(rounds, name, latest),
         overlap=overlap_of(loaded, name, settled, tolerance),
-        remaining=_remaining(loaded, corrected, own),
-        remaining_pairs=_remaining_pairs(corrected),
+        remaining=remaining_items(loaded, corrected, own),
+        remaining_pairs=remaining_pairs(corrected),
         alpha_of_first_round=next(
             (each.alpha for held in rounds[:1] for each in held.variables if each.variable == name),
             None,
         ),
+    )
+
+
+def interval_of(
+    loaded: Loaded,
+    name: str,
+    seed: int,
+    resamples: int = RESAMPLES,
+    confidence_level: float = CONFIDENCE_LEVEL,
+) -> IntervalResult:
+    """Return the interval of alpha of one variable, clusters of items drawn whole."""
+    return alpha_interval(
+        loaded.agreements[name],
+        np.random.default_rng(seed),
+        resamples=resamples,
+        confidence_level=confidence_level,
+        cluster_of_item=clusters_of(loaded),
+        seed=seed,
     )
 
 
@@ -302,50 +315,6 @@ def _any_label(corrected: Corrected, seed: int) -> AnyLabel | None:
             return None
         figures.append(after.agreement)
     return AnyLabel(low=min(figures), high=max(figures), draws=DRAWS, seed=seed)
-
-
-def _remaining(
-    loaded: Loaded, corrected: Corrected, own: Mapping[str, Settlement]
-) -> tuple[Remaining, ...]:
-    measured = corrected.measured
-    contribution = item_contributions(measured)
-    observed = measured.observed_disagreement or 1.0
-    profile = measured.profile_of_item
-    disputed = np.append(measured.disputed_profiles, False)[profile]
-    items = np.flatnonzero(disputed)
-    names = loaded.labels.items
-    heaviest = sorted(
-        items.tolist(), key=lambda item: (-round(contribution[item], 15), names[item])
-    )
-    return tuple(
-        Remaining(
-            item=str(names[item]),
-            contribution=float(contribution[item]),
-            share=float(contribution[item]) / observed,
-            labels=tuple(labels_of_item(loaded, corrected.variable.name, item)),
-            state=own[names[item]].state if names[item] in own else None,
-        )
-        for item in heaviest[:MOST_REMAINING]
-    )
-
-
-def _remaining_pairs(corrected: Corrected) -> tuple[RemainingPair, ...]:
-    parts = label_pair_parts(corrected.measured)
-    return tuple(
-        RemainingPair(
-            first=corrected.texts[first],
-            second=corrected.texts[second],
-            share=float(share),
-            n_items=int(n),
-        )
-        for first, second, share, n in zip(
-            parts.first[:MOST_REMAINING],
-            parts.second[:MOST_REMAINING],
-            parts.share[:MOST_REMAINING],
-            parts.n_items[:MOST_REMAINING],
-            strict=True,
-        )
-    )
 
 
 def _sent_since(rounds: Sequence[Round], name: str, latest: int) -> int:
@@ -387,55 +356,3 @@ def _unread(loaded: Loaded) -> list[str]:
         for variable in loaded.project.settings.variables
         if variable.name not in loaded.agreements
     ]
-
-
-def check_independence(
-    loaded: Loaded, rounds: Sequence[Round], *, relabelled: bool
-) -> tuple[str, ...]:
-    """Return the label files that changed since the first round.
-
-    Parameters
-    ----------
-    loaded : Loaded
-    rounds : sequence of Round
-    relabelled : bool
-        Whether to go on all the same.
-
-    Raises
-    ------
-    RelookError
-        Files changed and `relabelled` is false; names the items that were sent with other labels.
-    """
-    changed = changed_since_first_round(loaded)
-    if changed and not relabelled:
-        raise _changed_labels(loaded, rounds, changed)
-    return changed
-
-
-def _changed_labels(loaded: Loaded, rounds: Sequence[Round], changed: Sequence[str]) -> RelookError:
-    rows = {(row.item, row.variable): row for held in rounds for row in held.rows}
-    numbers = loaded.item_numbers([item for item, _ in rows])
-    items = []
-    for (key, row), number in zip(rows.items(), numbers, strict=True):
-        if key[1] not in loaded.agreements or not row.labels_digest:
-            continue
-        now = "" if number < 0 else labels_digest(labels_of_item(loaded, key[1], int(number)))
-        if now != row.labels_digest:
-            items.append(key[0])
-    said = (
-        f"{len(items):,} of the items that were sent have other labels now: "
-        f"{listed(dict.fromkeys(items))}"
-        if items
-        else "no item that was sent has other labels now"
-    )
-    message = (
-        "the label files are not those of the first round, so alpha would not be of independently "
-        f"made labels: {listed(changed)}; {said}"
-    )
-    return RelookError(
-        message,
-        where=Place(changed[0]),
-        mend="put the files of the first round back, and give the changed ones by --against; or "
-        "add --relabelled to go on with labels that may have been changed because of the "
-        "worksheets",
-    )

@@ -36,7 +36,7 @@ from relook.project.label_mergers import (
     mergers_that_lift,
 )
 from relook.project.loading import Loaded
-from relook.project.ordering import Ordering, groups_of, order_items
+from relook.project.ordering import Ordering, groups_of, order_items, overlap_of
 from relook.project.settings import QueueSettings
 from relook.tables.labels import VariableLabels
 
@@ -176,6 +176,7 @@ def score(
     queue: QueueSettings,
     *,
     seed: int,
+    with_doubt: bool = False,
     ordering: Ordering | None = None,
     merge: Sequence[MergeGroup] = (),
     resamples: int = RESAMPLES,
@@ -190,6 +191,8 @@ def score(
         Decides the ranking and how far the prospect goes.
     seed : int
         For the resampling and the last tie-break.
+    with_doubt : bool
+        Estimate doubt however long it takes.
     ordering : Ordering, optional
         One that was made already, as for a round.
     merge : sequence of MergeGroup
@@ -204,7 +207,14 @@ def score(
     """
     merged = merge_labels(loaded, merge)
     if ordering is None:
-        ordering = order_items(loaded, queue, seed=seed)
+        ordering = order_items(
+            loaded,
+            queue,
+            seed=seed,
+            with_doubt=with_doubt,
+            n_audit_items=queue.audit,
+            overlap=overlap_of(loaded.project.settings),
+        )
     variables = tuple(
         _score_variable(loaded, name, position, ordering, seed, resamples, confidence_level)
         for position, name in enumerate(loaded.agreements)

@@ -54,9 +54,9 @@ def alpha_in_words(agreement: Agreement, interval: Interval | None = None) -> st
         return f"Alpha is undefined: {agreement.undefined_because}. That is not perfect agreement."
     n_items = agreement.n_pairable_items
     if n_items < FEW_ITEMS:
+        said = f"{n_items:,} item is" if n_items == 1 else f"{n_items:,} items are"
         return (
-            f"{n_items:,} {'item' if n_items == 1 else 'items'}, fewer than {FEW_ITEMS}, are too few "
-            "to hold this alpha against a customary level."
+            f"{said} fewer than {FEW_ITEMS}: too few to hold this alpha against a customary level."
         )
     if interval is not None and interval.low <= 0 <= interval.high:
         return "The interval holds 0: this agreement cannot be told from chance."

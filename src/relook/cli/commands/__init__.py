@@ -9,6 +9,8 @@ from relook.cli.commands.check import check
 from relook.cli.commands.collect import collect
 from relook.cli.commands.new import new
 from relook.cli.commands.queue import queue
+from relook.cli.commands.release import release
+from relook.cli.commands.rescore import rescore
 from relook.cli.commands.score import score
 from relook.cli.commands.status import status
 from relook.cli.commands.why import why
@@ -25,5 +27,9 @@ COMMANDS: dict[str, list[tuple[str, Callable[..., Any], str]]] = {
         ("queue", queue, "relook queue my_project --top 40"),
         ("collect", collect, "relook collect my_project"),
         ("status", status, "relook status my_project"),
+    ],
+    "Conclude": [
+        ("rescore", rescore, "relook rescore my_project"),
+        ("release", release, "relook release my_project"),
     ],
 }

@@ -79,9 +79,7 @@ def rescore(
             loaded, seed=DEFAULT_SEED if seed is None else seed, relabelled=relabelled
         )
         if xlsx is not None:
-            data = write_report(
-                report_of(held, terminal.now().isoformat(timespec="seconds"))
-            )
+            data = write_report(report_of(held, terminal.now().isoformat(timespec="seconds")))
             if not dry_run:
                 write_whole(xlsx, data, force=force)
             terminal.say(f"{'would write' if dry_run else 'wrote'} {xlsx}")

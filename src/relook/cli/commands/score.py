@@ -92,7 +92,11 @@ def score(
             terminal.say(line)
         terminal.problems(loaded.problems)
         scored = scoring.score(
-            loaded, queue, seed=DEFAULT_SEED if seed is None else seed, merge=groups
+            loaded,
+            queue,
+            seed=DEFAULT_SEED if seed is None else seed,
+            with_doubt=items is not None,
+            merge=groups,
         )
         if scored.changed_files:
             terminal.warn(changed_warning(scored.changed_files))

@@ -72,7 +72,7 @@ def _variable(held: Correction, each: VariableCorrection) -> list[RenderableType
                 "was corrected, put these into a copy of the whole table first."
             )
         )
-    rows = [
+    own = [
         (
             shortened(coder.coder, 24),
             count(coder.n_labels),
@@ -86,7 +86,7 @@ def _variable(held: Correction, each: VariableCorrection) -> list[RenderableType
         if coder.n_changed or coder.n_added or coder.n_removed
     ]
     headers_of_coders = ("coder", "labels", "changed", "toward", "away", "added", "removed")
-    parts += [Text(""), small_table(headers_of_coders, rows, numbers=(1, 2, 3, 4, 5, 6))]
+    parts += [Text(""), small_table(headers_of_coders, own, numbers=(1, 2, 3, 4, 5, 6))]
     if each.changes:
         changes = [
             (

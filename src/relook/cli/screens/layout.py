@@ -81,8 +81,13 @@ def amount(value: float | None) -> str:
 
 
 def percent(value: float | None, *, decimals: int = 1) -> str:
-    """A share as a percentage."""
-    return UNDEFINED if value is None else f"{100 * value:.{decimals}f}%"
+    """A share as a percentage; one too small for its decimals is not shown as nothing."""
+    if value is None:
+        return UNDEFINED
+    least = 10.0**-decimals
+    if 0 < 100 * value < least / 2:
+        return f"<{least:.{decimals}f}%"
+    return f"{100 * value:.{decimals}f}%"
 
 
 def count(value: int) -> str:

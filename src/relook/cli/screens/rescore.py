@@ -19,7 +19,7 @@ from relook.cli.screens.layout import (
     stacked,
 )
 from relook.project import rescore_sentences as sentences
-from relook.project.moves import CoderStanding
+from relook.project.moves import CoderStanding, Move
 from relook.project.rescoring import Rescore, VariableRescore
 
 _SHOWN = 12
@@ -79,6 +79,15 @@ def _figures(held: Rescore, scored: VariableRescore) -> RenderableType:
             count(given.n_disputed_items),
         )
     ]
+    if held.changed_files:
+        rows.insert(
+            0,
+            (
+                "alpha when the first round was sent",
+                coefficient(scored.alpha_of_first_round),
+                *("",) * 4,
+            ),
+        )
     if after.n_cannot_be_coded:
         rows.append(
             (
@@ -123,7 +132,7 @@ def _moves(scored: VariableRescore) -> list[RenderableType]:
     most = scored.moves[0].n_labels
     rows = [
         (
-            f"{shortened(move.old, 30)} → {shortened(move.new or 'cannot be coded', 30)}",
+            _move_text(move),
             count(move.n_labels),
             count(move.n_items),
             bar(move.n_labels, most),
@@ -136,6 +145,12 @@ def _moves(scored: VariableRescore) -> list[RenderableType]:
         small_table(("", "labels", "items", ""), rows, numbers=(1, 2)),
         *_left(len(scored.moves), "move"),
     ]
+
+
+def _move_text(move: Move) -> str:
+    old, new = shortened(move.old, 30), shortened(move.new or "cannot be coded", 30)
+    # Undeclared labels may differ in nothing that a screen shows.
+    return f"{old} → {new}" + (" (differ in spaces)" if old == new else "")
 
 
 def _reasons(scored: VariableRescore) -> list[RenderableType]:
@@ -230,7 +245,9 @@ def _remaining(scored: VariableRescore) -> list[RenderableType]:
     return [
         *parts,
         small_table(("item", "of what is left", "labels", ""), rows, numbers=(1,)),
-        note(f"{counted(left, 'disputed item')} left. Pairs of labels, of D_o that is left: {pairs}."),
+        note(
+            f"{counted(left, 'disputed item')} left. Pairs of labels, of D_o that is left: {pairs}."
+        ),
     ]
 
 

@@ -29,7 +29,7 @@ from relook.project.verdict import alpha_in_words, verdict
 
 _FIRST_ITEMS = 10
 #: Rows of each small table: fewer where there are many variables, each of which has a page.
-_ROWS, _ROWS_OF_MANY, _MANY_VARIABLES = 6, 4, 4
+_ROWS, _ROWS_OF_MANY, _MANY_VARIABLES = 5, 3, 4
 _LABELS_IN_A_CELL = 6
 _MERGERS = 5
 
@@ -278,7 +278,13 @@ def _items(score: Score) -> list[RenderableType]:
     left = ranking.n_items - _FIRST_ITEMS
     if left > 0:
         parts.append(note(f"and {counted(left, 'item')} more; `--items FILE.csv` writes them all"))
-    parts.append(note(f"`relook queue` would send {selection.sentence(ranking)}."))
+    said = selection.sentence(ranking)
+    if any(score.loaded.project.rounds_folder.glob("*")):
+        parts.append(
+            note(f"Selected here: {said}. `relook queue` leaves out what is settled or sent.")
+        )
+    else:
+        parts.append(note(f"`relook queue` would send {said}."))
     return parts
 
 

@@ -99,7 +99,7 @@ def _coders(scored: VariableScore, n_rows: int) -> list[RenderableType]:
                 else ()
             ),
         )
-        for row in rows[:n_rows]
+        for row in _first(rows, n_rows)
     ]
     headers = (
         "coder",
@@ -157,7 +157,7 @@ def _two_coders(scored: VariableScore, n_rows: int) -> list[RenderableType]:
             count(row["n_second"]),
             f"{row['difference']:+,}" if row["difference"] else "0",
         )
-        for row in rows[:n_rows]
+        for row in _first(rows, n_rows)
     ]
     headers = ("label", shortened(first, _NARROW), shortened(second, _NARROW), "difference")
     parts.append(note("How often each gave a label, on the same items; widest difference first:"))
@@ -195,14 +195,12 @@ def _label_pairs(scored: VariableScore, n_rows: int) -> list[RenderableType]:
             bar(row["share"], most),
             percent(row["chance_share"]),
         )
-        for row in rows[:n_rows]
+        for row in _first(rows, n_rows)
     ]
     headers = ("labels", "items", "of D_o", "", "of D_e, by chance")
     table = small_table(headers, shown, numbers=(1, 2, 4))
-    parts = [table, *_left(rows, n_rows, "pair")]
-    if scored.mergers:
-        parts.append(note('`--merge "NEW=A,B"` shows alpha with labels taken as one.'))
-    return _section("pairs of labels", *parts)
+    merge = '`--merge "NEW=A,B"` shows alpha with labels taken as one' if scored.mergers else ""
+    return _section("pairs of labels", table, *_left(rows, n_rows, "pair", merge))
 
 
 def _labels(scored: VariableScore, n_rows: int) -> list[RenderableType]:
@@ -227,7 +225,7 @@ def _labels(scored: VariableScore, n_rows: int) -> list[RenderableType]:
                 else ()
             ),
         )
-        for row in rows[:n_rows]
+        for row in _first(rows, n_rows)
     ]
     headers = (
         "label",
@@ -237,9 +235,9 @@ def _labels(scored: VariableScore, n_rows: int) -> list[RenderableType]:
         "alone: alpha",
         *((shortened(coder, 8) for coder in coders) if by_coder else ()),
     )
-    said = "“alone”: nominal alpha of the label against all others taken as one."
+    said = "“alone”: nominal alpha of the label against all others as one."
     if by_coder:
-        said += " Under a coder: the label's share of their labels; their items may differ."
+        said += " By coder: share of their labels."
     elif len(coders) > _COLUMNS:
         said += " --json has label use by coder."
     table = small_table(headers, shown, numbers=tuple(range(1, len(headers))))
@@ -257,16 +255,24 @@ def _groups(rows: Sequence[Row], n_rows: int) -> RenderableType:
             bar(row["share"], most),
             coefficient(row["own_alpha"]),
         )
-        for row in rows[:n_rows]
+        for row in _first(rows, n_rows)
     ]
     headers = ("group", "items", "of labels", "of D_o", "", "own alpha")
     table = small_table(headers, shown, numbers=(1, 2, 3, 5))
     return stacked(table, *_left(rows, n_rows, "group"))
 
 
-def _left(rows: Sequence[Row], n_rows: int, word: str) -> list[RenderableType]:
-    left = len(rows) - n_rows
-    return [note(f"and {counted(left, word)} more; --json has them all")] if left > 0 else []
+def _first(rows: Sequence[Row], n_rows: int) -> Sequence[Row]:
+    """The first rows; one more takes no more room than saying that it is left out."""
+    return rows if len(rows) <= n_rows + 1 else rows[:n_rows]
+
+
+def _left(rows: Sequence[Row], n_rows: int, word: str, further: str = "") -> list[RenderableType]:
+    """What the table leaves out, if anything, and another remark on the same line."""
+    left = len(rows) - len(_first(rows, n_rows))
+    said = [f"and {counted(left, word)} more; --json has them all"] if left else []
+    said += [further] if further else []
+    return [note("; ".join(said))] if said else []
 
 
 def _prospect(scored: VariableScore) -> list[RenderableType]:
