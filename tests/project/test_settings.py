@@ -131,7 +131,7 @@ def test_all_faults_are_told_in_one_pass(tmp_path):
 
 def test_a_folder_without_settings_says_how_to_make_them(tmp_path):
     """The mend names the command that makes a project."""
-    with pytest.raises(RelookError, match="no relook.toml in this folder") as caught:
+    with pytest.raises(RelookError, match=r"no relook\.toml in this folder") as caught:
         load_settings(tmp_path / "relook.toml")
     assert "relook new TABLE" in str(caught.value.mend)
 
