@@ -251,3 +251,12 @@ def test_labels_that_changed_after_the_round_are_told(ferry, capsys):
     _, standing = json_of(capsys, "status", ferry)
     assert {held["item"] for held in standing["stale"]} == {changed}
     assert {held["item"] for held in standing["orphaned"]} == {gone}
+
+
+def test_single_label_items_are_sent_when_asked_for(ferry, capsys):
+    """--include-single adds the six items that nothing else can compare."""
+    code, queued = json_of(capsys, "queue", ferry, "--include-single", "--audit", "0")
+    assert (code, queued["n_disputed_items"], queued["n_items"]) == (0, 40, 46)
+    rows = json.loads((ferry / "rounds/01/round.json").read_text(encoding="utf-8"))["rows"]
+    single = {row["item"] for row in rows if row["stratum"] == "single"}
+    assert single == {"r084", "r096", "r186", "r229", "r267", "r275"}

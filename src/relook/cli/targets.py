@@ -44,6 +44,7 @@ def open_target(target: Path, terminal: Terminal, *, difference: str | None = No
     guessed = guessed_project([target], _overrides(difference))
     for line in guessed.said:
         terminal.say(line)
+    terminal.say(f"the flags named above are those of `relook new {target}`")
     return guessed.project
 
 
