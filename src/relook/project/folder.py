@@ -55,12 +55,10 @@ class Project:
 
     @property
     def shown_root(self) -> str:
-        """The folder as the user would type it from where they stand."""
-        try:
-            shown = os.path.relpath(self.root)
-        except ValueError:  # another drive
-            return str(self.root)
-        return str(self.root) if Path(shown).parts[:2] == ("..", "..") else shown
+        """The folder as the user would type it; whole where they stand outside of it."""
+        with contextlib.suppress(ValueError):
+            return str(self.root.relative_to(Path.cwd()))
+        return str(self.root)
 
     @property
     def rounds_folder(self) -> Path:
