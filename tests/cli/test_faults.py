@@ -163,3 +163,15 @@ def test_interrupting_says_that_nothing_is_half_written(tmp_path, capsys, monkey
     monkeypatch.setattr(relook.project.folder, "load_settings", interrupt)
     assert run(["score", str(tmp_path)]) == 130
     assert "interrupted" in capsys.readouterr().err
+
+
+@pytest.mark.parametrize(
+    ("flag", "value", "mend"),
+    [("--share", "0", "give a share such as 0.6"), ("--hours", "0", "give hours such as 6")],
+)
+def test_a_limit_of_nothing_is_answered_with_a_mend(tmp_path, capsys, flag, value, mend):
+    """A queue of no items is no queue."""
+    ferry = copy_sample("ferry_remarks", tmp_path)
+    assert run(["queue", str(ferry), flag, value]) == 2
+    assert f"mend: {mend}" in capsys.readouterr().err
+    assert not (ferry / "rounds").exists()

@@ -101,7 +101,7 @@ alpha = 0.8
         ("format = 2\n" + LEAST, "format is 2, relook.toml\nmend: write 1"),
         ("[label]\n" + LEAST, "unknown table [label], relook.toml\nmend: did you mean [labels]?"),
         (LEAST + "[queue]\ntopp = 3", 'unknown key [queue] topp, relook.toml\nmend: did you mean "top"?'),
-        (LEAST + "[queue]\nshare = 3", "[queue] share is 3, relook.toml\nmend: write a number from 0 to 1"),
+        (LEAST + "[queue]\nshare = 3", "[queue] share is 3, relook.toml\nmend: write a number above 0 and up to 1"),
         (LEAST + "[queue]\ntop = true", "[queue] top is True, relook.toml\nmend: write 1 or more"),
         (LEAST + "[worksheet]\nadjudicators = []", "[worksheet] adjudicators is [], relook.toml\nmend: write a list of names"),
         (LEAST + '[variables.x]\ndifference = "nominl"', "[variables.x] difference is 'nominl', relook.toml\nmend: write one of \"nominal\""),

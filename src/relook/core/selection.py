@@ -190,11 +190,14 @@ def _check(
     n_audit_items: int,
 ) -> None:
     if top is not None and top < 1:
-        raise RelookError(f"`top` must be 1 or more; got {top}")
+        raise RelookError(f"`top` must be 1 or more; got {top}", mend="give a number such as 40")
     if share is not None and not 0 < share <= 1:
-        raise RelookError(f"`share` must be above 0 and at most 1; got {share}")
+        raise RelookError(
+            f"`share` must be above 0 and at most 1; got {share:g}",
+            mend="give a share such as 0.6",
+        )
     if hours is not None and not hours > 0:
-        raise RelookError(f"`hours` must be above 0; got {hours}")
+        raise RelookError(f"`hours` must be above 0; got {hours:g}", mend="give hours such as 6")
     if seconds_per_item is not None and not seconds_per_item > 0:
         raise RelookError(f"`seconds_per_item` must be above 0; got {seconds_per_item}")
     if hours is not None and seconds_per_item is None:

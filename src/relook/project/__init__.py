@@ -7,7 +7,7 @@ a round going out: ordering, history, queueing, round_items, queue_run, sheets, 
     issuing, rounds, overviews, mending
 a round coming back: returns, checking, weighing, collecting, collected, collect_table,
     rulings, rulings_run, record, recorded, rebuilding, settlements, standing
-what it came to: rescoring, unchanged, corrected, moves, audit_findings, remaining,
+what it came to: rescoring, corrected, moves, audit_findings, remaining,
     rescore_sentences, rescore_tables, rescore_report
 labels that coders corrected: correcting, label_versions
 release: releasing, final_labels, corrected_tables, methods_statement, release_files

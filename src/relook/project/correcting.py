@@ -20,10 +20,10 @@ from relook.core.agreement import Agreement
 from relook.core.settling import CANNOT_BE_CODED
 from relook.errors import ExitCode, Place, RelookError
 from relook.project.corrected import with_decisions
+from relook.project.independence import check_independence
 from relook.project.label_versions import LabelVersion, reading_tables, write_version
 from relook.project.loading import Loaded, load
 from relook.project.rounds import read_rounds
-from relook.project.unchanged import check_independence
 
 DIRECTIONS = ("toward", "away", "neither", "alone")
 #: Where a table lacks more than this share of the labels, it is told to be perhaps not whole.

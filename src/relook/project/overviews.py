@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 from collections import defaultdict
+from collections.abc import Iterable
+from dataclasses import fields
+from typing import TypeVar
 
 from relook.project.issuing import IssuedRound
 from relook.project.item_table import item_table
 from relook.project.loading import labels_of_item, shown_texts
 from relook.project.queueing import PlannedRound
 from relook.project.score_tables import (
+    Row,
     coder_rows,
     defined,
     group_rows,
@@ -26,6 +30,8 @@ from relook.worksheet.overview_model import (
     ProspectRow,
     RankedRow,
 )
+
+_Kind = TypeVar("_Kind", CoderRow, LabelPairRow, GroupRow, ProspectRow)
 
 
 def overview_of(score: Score, planned: PlannedRound, issued: IssuedRound) -> Overview:
@@ -47,60 +53,24 @@ def overview_of(score: Score, planned: PlannedRound, issued: IssuedRound) -> Ove
         figures=tuple(_figures(score)),
         notes=tuple(_notes(score, planned)),
         ranking=_ranking(score, planned),
-        coders=tuple(
-            CoderRow(
-                variable=row["variable"],
-                coder=row["coder"],
-                contribution=row["contribution"],
-                share=row["share"],
-                n_labels=row["n_labels"],
-                share_of_labels=row["share_of_labels"],
-                involved=row["involved"],
-                own_alpha=row["own_alpha"],
-            )
-            for scored in each
-            for row in coder_rows(scored)
-        ),
-        label_pairs=tuple(
-            LabelPairRow(
-                variable=row["variable"],
-                first=row["first"],
-                second=row["second"],
-                contribution=row["contribution"],
-                share=row["share"],
-            )
-            for scored in each
-            for row in label_pair_rows(scored)
+        coders=_rows(CoderRow, [row for scored in each for row in coder_rows(scored)]),
+        label_pairs=_rows(
+            LabelPairRow, [row for scored in each for row in label_pair_rows(scored)]
         ),
         label_order=tuple(
             (scored.name, scored.held.texts)
             for scored in each
             if scored.agreement.function.needs != "number"
         ),
-        groups=tuple(
-            GroupRow(
-                variable=row["variable"],
-                column=row["column"],
-                group=row["group"],
-                n_items=row["n_items"],
-                contribution=row["contribution"],
-                share=row["share"],
-                own_alpha=row["own_alpha"],
-            )
-            for scored in each
-            for row in group_rows(scored)
-        ),
-        prospect=tuple(
-            ProspectRow(
-                variable=row["variable"],
-                n_settled=row["n_settled"],
-                low=row["low"],
-                high=row["high"],
-            )
-            for scored in each
-            for row in prospect_rows(scored)
-        ),
+        groups=_rows(GroupRow, [row for scored in each for row in group_rows(scored)]),
+        prospect=_rows(ProspectRow, [row for scored in each for row in prospect_rows(scored)]),
     )
+
+
+def _rows(kind: type[_Kind], rows: Iterable[Row]) -> tuple[_Kind, ...]:
+    """Take from each row of figures what the overview shows of it; the keys are its fields."""
+    names = [field.name for field in fields(kind)]
+    return tuple(kind(**{name: row[name] for name in names}) for row in rows)
 
 
 def _figures(score: Score) -> list[Figure]:

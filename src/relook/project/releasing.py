@@ -21,6 +21,7 @@ from relook.project.corrected import correct
 from relook.project.corrected_tables import COUNTS_NOTE, corrected_tables
 from relook.project.final_labels import FinalLabel, TiesRule, counts_of, final_labels
 from relook.project.folder import Project
+from relook.project.independence import check_independence
 from relook.project.label_versions import LabelVersion, read_versions, with_version
 from relook.project.loading import Loaded, load
 from relook.project.methods_statement import methods_statement
@@ -33,7 +34,6 @@ from relook.project.rescoring import (
 )
 from relook.project.rounds import read_rounds
 from relook.project.settlements import settlements
-from relook.project.unchanged import check_independence
 from relook.tables.numbers import parse_number
 from relook.tables.results import csv_bytes
 from relook.worksheet.final_book import write_final_book

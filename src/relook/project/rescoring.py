@@ -19,6 +19,7 @@ from relook.core.settling import CANNOT_BE_CODED, agreement_after
 from relook.errors import ExitCode, RelookError
 from relook.project.audit_findings import AuditFindings, audited_items, audits_of
 from relook.project.corrected import Corrected, correct
+from relook.project.independence import check_independence
 from relook.project.loading import Loaded, labels_digest, labels_of_item
 from relook.project.moves import (
     CoderStanding,
@@ -36,7 +37,6 @@ from relook.project.remaining import Remaining, RemainingPair, remaining_items, 
 from relook.project.rounds import Round, read_rounds
 from relook.project.scoring import clusters_of
 from relook.project.settlements import settlements, tolerances
-from relook.project.unchanged import check_independence
 
 STATES = ("settled", "cannot be coded", "split", "unconfirmed", "open")
 #: How often items are settled by one of their own labels, drawn at random, for comparison.

@@ -122,7 +122,9 @@ _ITEMS: dict[str, _Check] = {
 _QUEUE: dict[str, _Check] = {
     "rank_by": _one_of("contribution", "doubt", "intensity"),
     "top": lambda value: None if _is_count(value) is None and value else "1 or more",
-    "share": _is_share,
+    "share": lambda value: (
+        None if _is_share(value) is None and value > 0 else "a number above 0 and up to 1"
+    ),
     "hours": _is_amount,
     "seconds_per_item": _is_amount,
     "audit": _is_count,
