@@ -14,7 +14,7 @@ from pathlib import Path
 from openpyxl import load_workbook
 
 from reference.small_project import NOW, TOPICS, fill, give_back, make_project, make_worksheet
-from relook.project.collecting import collect
+from relook.project.returning.collecting import collect
 
 
 def main(n_worksheets: int, n_rows: int) -> None:

@@ -139,12 +139,12 @@ def test_a_closed_pipe_is_quiet(tmp_path):
 
 def test_an_unexpected_fault_asks_for_debug(tmp_path, capsys, monkeypatch):
     """What is not the user's mistake says so, without a traceback."""
-    import relook.project.folder
+    import relook.project.setup.folder
 
     def fail(root: Path) -> None:
         raise ZeroDivisionError("by hand")
 
-    monkeypatch.setattr(relook.project.folder, "load_settings", fail)
+    monkeypatch.setattr(relook.project.setup.folder, "load_settings", fail)
     assert run(["score", str(tmp_path)]) == 2
     said = capsys.readouterr().err
     assert "internal error in relook" in said
@@ -155,12 +155,12 @@ def test_an_unexpected_fault_asks_for_debug(tmp_path, capsys, monkeypatch):
 
 def test_interrupting_says_that_nothing_is_half_written(tmp_path, capsys, monkeypatch):
     """Ctrl-C exits with 130."""
-    import relook.project.folder
+    import relook.project.setup.folder
 
     def interrupt(root: Path) -> None:
         raise KeyboardInterrupt
 
-    monkeypatch.setattr(relook.project.folder, "load_settings", interrupt)
+    monkeypatch.setattr(relook.project.setup.folder, "load_settings", interrupt)
     assert run(["score", str(tmp_path)]) == 130
     assert "interrupted" in capsys.readouterr().err
 

@@ -6,10 +6,10 @@ import numpy as np
 import pytest
 
 from reference.made_projects import csv_text, long_csv, make, scored
-from relook.project.item_table import item_table
-from relook.project.score_object import score_object
-from relook.project.settings import QueueSettings
-from relook.project.verdict import verdict
+from relook.project.figures.item_table import item_table
+from relook.project.figures.score_object import score_object
+from relook.project.figures.verdict import verdict
+from relook.project.setup.settings import QueueSettings
 
 
 @pytest.fixture(scope="module")

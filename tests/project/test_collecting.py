@@ -22,10 +22,10 @@ from reference.small_project import (
     queue_of,
 )
 from relook.errors import RelookError
-from relook.project.collected import Collected
-from relook.project.collecting import collect
-from relook.project.folder import Project
-from relook.project.record import read_record
+from relook.project.archive.record import read_record
+from relook.project.returning.collected import Collected
+from relook.project.returning.collecting import collect
+from relook.project.setup.folder import Project
 
 FILLED = {
     0: "delay",

@@ -5,9 +5,9 @@ import pytest
 from reference import by_definition
 from reference.concluded_project import make_project, send_round, write_labels
 from relook.errors import ExitCode, RelookError
-from relook.project.correcting import compare_with, correction_object, record_correction
-from relook.project.label_versions import read_versions, with_version
-from relook.project.loading import load
+from relook.project.corrections.correcting import compare_with, correction_object, record_correction
+from relook.project.corrections.label_versions import read_versions, with_version
+from relook.project.setup.loading import load
 
 LABELS = {
     "i1": [("c1", "a"), ("c2", "b"), ("c3", "b")],
@@ -125,7 +125,7 @@ def test_counts_do_not_say_who_changed_a_label(tmp_path):
         'format = 1\nproject = "x"\n[labels]\nfiles = ["labels.csv"]\nlayout = "counts"\n'
         'item = "item"\n[variables.topic]\nlabels = ["a", "b"]\n'
     )
-    from relook.project.folder import Project
+    from relook.project.setup.folder import Project
 
     with pytest.raises(RelookError, match="does not say who"):
         compared(Project.open(root))
@@ -133,7 +133,7 @@ def test_counts_do_not_say_who_changed_a_label(tmp_path):
 
 def test_coders_named_by_files_keep_the_files_that_were_not_corrected(tmp_path):
     """With one file per coder, a corrected file takes the place of its own coder's alone."""
-    from relook.project.folder import Project
+    from relook.project.setup.folder import Project
 
     root = tmp_path / "p"
     (root / "labels").mkdir(parents=True)

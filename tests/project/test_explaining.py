@@ -10,8 +10,8 @@ from reference.cases import CASES, random_table
 from reference.made_projects import csv_text, long_csv, make
 from reference.published import coder_rows, what_if
 from relook.errors import RelookError
-from relook.project.explaining import FORMULAS, explain, why_object
-from relook.project.loading import load
+from relook.project.figures.explaining import FORMULAS, explain, why_object
+from relook.project.setup.loading import load
 
 
 def variable(text):

@@ -6,8 +6,8 @@ from pathlib import Path
 import pytest
 
 from relook.errors import RelookError
-from relook.project import folder
-from relook.project.folder import Project, write_whole
+from relook.project.setup import folder
+from relook.project.setup.folder import Project, write_whole
 
 
 @pytest.fixture

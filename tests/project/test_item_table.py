@@ -9,7 +9,7 @@ import pytest
 from reference import by_definition as twin
 from reference.cases import random_table
 from reference.made_projects import csv_text, long_csv, make, scored
-from relook.project.item_table import COLUMNS, item_table
+from relook.project.figures.item_table import COLUMNS, item_table
 from relook.tables.results import csv_bytes
 
 

@@ -13,10 +13,10 @@ import pytest
 
 from reference.small_project import NOW, fill, give_back, make_project
 from relook.errors import RelookError
-from relook.project.collecting import collect
-from relook.project.folder import Project
-from relook.project.rebuilding import rebuild
-from relook.project.record import read_record
+from relook.project.archive.record import read_record
+from relook.project.returning.collecting import collect
+from relook.project.returning.rebuilding import rebuild
+from relook.project.setup.folder import Project
 
 KILLS = 200
 

@@ -5,9 +5,9 @@ import pytest
 from reference import by_definition as twin
 from reference.made_projects import long_csv, make, scored
 from relook.errors import RelookError
-from relook.project.label_mergers import MergeGroup, merge_labels, parse_merge_group
-from relook.project.loading import load
-from relook.project.score_object import score_object
+from relook.project.figures.label_mergers import MergeGroup, merge_labels, parse_merge_group
+from relook.project.figures.score_object import score_object
+from relook.project.setup.loading import load
 
 TABLE = {
     u: [("a", labels[0]), ("b", labels[1]), ("c", labels[2])]

@@ -11,8 +11,8 @@ from pathlib import Path
 import pytest
 
 from reference.small_project import NOW, give_back, make_project
-from relook.project.collecting import collect
-from relook.project.record import read_record
+from relook.project.archive.record import read_record
+from relook.project.returning.collecting import collect
 
 SOFFICE = shutil.which("soffice")
 SYSTEM_PYTHON = "/usr/bin/python3"

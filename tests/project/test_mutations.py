@@ -12,9 +12,9 @@ from openpyxl import Workbook
 
 from reference.small_project import edited, fill, make_project, make_worksheet, queue_of
 from relook.errors import RelookError
-from relook.project.checking import Sent
-from relook.project.collecting import check_returned, sent_rows
-from relook.project.returns import Returned
+from relook.project.returning.checking import Sent
+from relook.project.returning.collecting import check_returned, sent_rows
+from relook.project.returning.returns import Returned
 from relook.worksheet.write import write_worksheet
 
 DECIDED = {0: "delay", 1: "staff", 2: "price", 4: "delay"}

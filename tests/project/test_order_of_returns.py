@@ -9,9 +9,9 @@ import pytest
 
 from reference.small_project import NOW, fill, give_back, make_project, make_worksheet
 from relook.core.decisions import fold
-from relook.project.collecting import collect
-from relook.project.folder import Project
-from relook.project.record import read_record
+from relook.project.archive.record import read_record
+from relook.project.returning.collecting import collect
+from relook.project.setup.folder import Project
 
 
 def settled(project: Project) -> dict[str, str]:

@@ -7,10 +7,10 @@ import pytest
 
 from reference.made_projects import csv_text, long_csv, make
 from relook.errors import RelookError
-from relook.project import ordering as ordering_module
-from relook.project.loading import load
-from relook.project.ordering import groups_of, order_items, settings_of_queue
-from relook.project.settings import QueueSettings
+from relook.project.figures import ordering as ordering_module
+from relook.project.figures.ordering import groups_of, order_items, settings_of_queue
+from relook.project.setup.loading import load
+from relook.project.setup.settings import QueueSettings
 
 TABLE = {
     f"i{u:02d}": [(c, "pqr"[(u + (c == "abc"[u % 3]) * (u % 2)) % 3]) for c in "abc"]

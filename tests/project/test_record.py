@@ -11,10 +11,10 @@ import pytest
 
 from reference.small_project import NOW, SETTINGS, fill, give_back, make_project, make_worksheet
 from relook.errors import RelookError
-from relook.project.collecting import collect
-from relook.project.folder import Project
-from relook.project.rebuilding import rebuild
-from relook.project.record import inspect_record, read_record, stale_decisions
+from relook.project.archive.record import inspect_record, read_record, stale_decisions
+from relook.project.returning.collecting import collect
+from relook.project.returning.rebuilding import rebuild
+from relook.project.setup.folder import Project
 
 
 @pytest.fixture

@@ -16,11 +16,11 @@ from reference.concluded_project import (
     write_labels,
 )
 from relook.errors import RelookError
-from relook.project.correcting import compare_with, record_correction
-from relook.project.folder import Project
-from relook.project.loading import load
-from relook.project.release_files import check_release, write_release
-from relook.project.releasing import ReleaseRequest, formula_like, make_release
+from relook.project.corrections.correcting import compare_with, record_correction
+from relook.project.release.release_files import check_release, write_release
+from relook.project.release.releasing import ReleaseRequest, formula_like, make_release
+from relook.project.setup.folder import Project
+from relook.project.setup.loading import load
 
 STAMP = "2031-03-01T09:00:00+00:00"
 LABELS = {
@@ -403,7 +403,7 @@ def test_the_same_record_gives_the_same_bytes(project):
 
 def test_more_labels_than_a_sheet_holds_come_as_csv_alone(project, monkeypatch):
     """The workbook is left out and a note says so; nothing is cut."""
-    monkeypatch.setattr("relook.project.releasing.MOST_SHEET_LABELS", 9)
+    monkeypatch.setattr("relook.project.release.releasing.MOST_SHEET_LABELS", 9)
     release = released(project)
     assert "final_labels.xlsx" not in release.files
     assert len(rows_of(release)) == 10

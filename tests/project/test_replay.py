@@ -14,10 +14,10 @@ from hypothesis import strategies as st
 
 from reference.small_project import NOW, fill, make_project, make_worksheet
 from relook.core.decisions import fold
-from relook.project.collecting import collect
-from relook.project.folder import Project
-from relook.project.rebuilding import rebuild
-from relook.project.record import read_record
+from relook.project.archive.record import read_record
+from relook.project.returning.collecting import collect
+from relook.project.returning.rebuilding import rebuild
+from relook.project.setup.folder import Project
 from relook.worksheet.write import write_worksheet
 
 SENT = write_worksheet(make_worksheet(n_items=2))

@@ -10,13 +10,13 @@ from reference import by_definition
 from reference.concluded_project import Ruling, make_project, rule, send_round, write_labels
 from relook.core.decisions import Settlement
 from relook.errors import ExitCode, RelookError
-from relook.project import rescore_sentences as sentences
-from relook.project.audit_findings import audits_of
-from relook.project.loading import load
-from relook.project.moves import ReasonCount
-from relook.project.rescore_tables import rescore_object
-from relook.project.rescoring import rescore
-from relook.project.rounds import Round, RoundRow, RoundStratum
+from relook.project.archive.rounds import Round, RoundRow, RoundStratum
+from relook.project.outcome import rescore_sentences as sentences
+from relook.project.outcome.audit_findings import audits_of
+from relook.project.outcome.moves import ReasonCount
+from relook.project.outcome.rescore_tables import rescore_object
+from relook.project.outcome.rescoring import rescore
+from relook.project.setup.loading import load
 
 
 def rescored(project, **options):

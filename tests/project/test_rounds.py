@@ -6,8 +6,7 @@ import json
 import pytest
 
 from relook.errors import RelookError
-from relook.project.folder import Project
-from relook.project.rounds import (
+from relook.project.archive.rounds import (
     Round,
     RoundRow,
     RoundStratum,
@@ -15,6 +14,7 @@ from relook.project.rounds import (
     RoundWorksheet,
     read_rounds,
 )
+from relook.project.setup.folder import Project
 
 ROUND = Round(
     number=1,

@@ -10,11 +10,11 @@ import pytest
 from reference.small_project import NOW, SEVERITY, TOPIC, make_project
 from relook.core.decisions import LEAD
 from relook.errors import RelookError
-from relook.project.collected import Collected
-from relook.project.folder import Project
-from relook.project.rebuilding import rebuild
-from relook.project.record import read_record
-from relook.project.rulings import collect_rulings
+from relook.project.archive.record import read_record
+from relook.project.returning.collected import Collected
+from relook.project.returning.rebuilding import rebuild
+from relook.project.returning.rulings import collect_rulings
+from relook.project.setup.folder import Project
 from relook.worksheet.model import SheetVariable
 
 ITEMS = ("remark 01", "remark 02", "remark 03")

@@ -11,7 +11,7 @@ from reference import by_definition as twin
 from reference.cases import CASES, random_table
 from reference.made_projects import csv_text, long_csv, make, scored
 from reference.published import coder_rows, example, what_if
-from relook.project.score_object import score_object
+from relook.project.figures.score_object import score_object
 
 NOMINAL = '[variables.label]\ncolumn = "label"\n'
 
@@ -141,7 +141,7 @@ def test_chance_shares_are_shares_of_expected_disagreement(tmp_path):
 
 def test_every_key_is_documented(tmp_path):
     """The docstring of `score_object` names each key of each list."""
-    from relook.project.label_mergers import MergeGroup
+    from relook.project.figures.label_mergers import MergeGroup
 
     rng = np.random.default_rng(5)
     table = {u: [(c, str(rng.choice(list("pqr")))) for c in "ab"] for u in range(40)}

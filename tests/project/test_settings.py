@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 
 from relook.errors import RelookError
-from relook.project.settings import load_settings
+from relook.project.setup.settings import load_settings
 
 LEAST = '[labels]\nfiles = ["labels.csv"]\ncoder = "coder"\n'
 

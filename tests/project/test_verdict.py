@@ -4,8 +4,8 @@ import numpy as np
 import pytest
 
 from reference.made_projects import long_csv, make, scored
-from relook.project import verdict as rules
-from relook.project.verdict import alpha_in_words, verdict
+from relook.project.figures import verdict as rules
+from relook.project.figures.verdict import alpha_in_words, verdict
 
 
 def one(tmp_path, table):

@@ -10,11 +10,11 @@ from datetime import UTC, datetime
 from pathlib import Path
 
 from relook.core.decisions import Decision
-from relook.project.folder import Project, write_whole
-from relook.project.loading import labels_digest
-from relook.project.record import make_file, read_record, stamp_of, write_file
-from relook.project.recorded import Recorded
-from relook.project.rounds import Round, RoundRow, RoundStratum, RoundVariable
+from relook.project.archive.record import make_file, read_record, stamp_of, write_file
+from relook.project.archive.recorded import Recorded
+from relook.project.archive.rounds import Round, RoundRow, RoundStratum, RoundVariable
+from relook.project.setup.folder import Project, write_whole
+from relook.project.setup.loading import labels_digest
 
 PROJECT_ID = "madeforatest"
 NOW = datetime(2031, 3, 1, 9, 0, tzinfo=UTC)

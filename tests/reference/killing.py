@@ -14,8 +14,8 @@ import time
 from pathlib import Path
 
 from reference.small_project import NOW
-from relook.project.collecting import collect
-from relook.project.folder import Project
+from relook.project.returning.collecting import collect
+from relook.project.setup.folder import Project
 
 
 def main(template: Path, work: Path, kills: int) -> None:

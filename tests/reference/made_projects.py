@@ -8,10 +8,10 @@ from collections.abc import Hashable, Iterable, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
-from relook.project.folder import Project
-from relook.project.loading import Loaded, load
-from relook.project.scoring import Score, score
-from relook.project.settings import QueueSettings
+from relook.project.figures.scoring import Score, score
+from relook.project.setup.folder import Project
+from relook.project.setup.loading import Loaded, load
+from relook.project.setup.settings import QueueSettings
 
 
 def long_csv(table: Mapping[Hashable, Iterable[tuple[Hashable, Any]]]) -> str:

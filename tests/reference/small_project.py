@@ -16,9 +16,9 @@ from pathlib import Path
 from openpyxl import Workbook, load_workbook
 from openpyxl.worksheet.worksheet import Worksheet as XlsxSheet
 
-from relook.project.decidable import SHEET_VARIABLES, variables_to_settings
-from relook.project.folder import Project, write_whole
-from relook.project.rounds import Round, RoundRow, RoundWorksheet
+from relook.project.archive.decidable import SHEET_VARIABLES, variables_to_settings
+from relook.project.archive.rounds import Round, RoundRow, RoundWorksheet
+from relook.project.setup.folder import Project, write_whole
 from relook.worksheet.keys import adjudicator_id, evidence_digests, row_keys, worksheet_id
 from relook.worksheet.layout import evidence_cells
 from relook.worksheet.model import SheetRow, SheetVariable, Worksheet

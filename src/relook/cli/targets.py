@@ -9,9 +9,9 @@ from pathlib import Path
 from relook.cli.terminal import Terminal
 from relook.core.differences import parse_difference
 from relook.errors import Place, RelookError
-from relook.project.folder import Project
-from relook.project.guessed import folder_beside, guessed_project, in_folder
-from relook.project.settings import SETTINGS_FILE, Settings
+from relook.project.setup.folder import Project
+from relook.project.setup.guessed import folder_beside, guessed_project, in_folder
+from relook.project.setup.settings import SETTINGS_FILE, Settings
 from relook.tables.guessing import Overrides
 
 

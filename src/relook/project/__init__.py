@@ -1,14 +1,11 @@
-"""A project folder: its settings, rounds and record, and what is done with them.
+"""A project folder, and everything that is done with it; each package imports only earlier ones.
 
-the folder and its settings: folder, settings, settings_schema, settings_text, guessed, people
-figures: loading, scoring, score_tables, use_tables, score_object, item_table,
-    consensus_texts, explaining, label_mergers, verdict, requiring, independence
-a round going out: ordering, history, queueing, round_items, queue_run, sheets, decidable,
-    issuing, rounds, overviews, mending
-a round coming back: returns, checking, weighing, collecting, collected, collect_table,
-    rulings, rulings_run, record, recorded, rebuilding, settlements, standing
-what it came to: rescoring, corrected, moves, audit_findings, remaining,
-    rescore_sentences, rescore_tables, rescore_report
-labels that coders corrected: correcting, label_versions
-release: releasing, final_labels, corrected_tables, methods_statement, release_files
+setup: the folder as it stands, its settings, people and tables
+archive: rounds sent and decisions recorded, which are kept for good
+figures: what the labels come to
+sending: a round going out
+returning: a round coming back
+outcome: what the decisions came to
+corrections: labels that their coders corrected
+release: final labels
 """

@@ -35,7 +35,7 @@ def check(
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.check import check_object, check_screen
         from relook.cli.targets import open_target
-        from relook.project.folder import write_whole
+        from relook.project.setup.folder import write_whole
         from relook.tables.checking import check_tables
         from relook.tables.results import problems_csv
 

@@ -63,12 +63,12 @@ def collect(
     """Take worksheets back: valid decisions are kept, every other row is listed with its mend."""
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.collect import collect_screen, rebuild_screen
-        from relook.project import collecting
-        from relook.project.collect_table import collect_object
-        from relook.project.folder import Project, write_whole
-        from relook.project.mending import mend_worksheet
-        from relook.project.rebuilding import rebuild as rebuild_record
-        from relook.project.rulings_run import run_rulings
+        from relook.project.returning import collecting
+        from relook.project.returning.collect_table import collect_object
+        from relook.project.returning.rebuilding import rebuild as rebuild_record
+        from relook.project.returning.rulings_run import run_rulings
+        from relook.project.sending.mending import mend_worksheet
+        from relook.project.setup.folder import Project, write_whole
 
         if sum((rulings is not None, rebuild, bool(worksheets))) > 1:
             raise RelookError(

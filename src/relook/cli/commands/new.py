@@ -100,7 +100,7 @@ def new(
     """Look at label tables, say what they seem to be, and write a project's relook.toml."""
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.core.differences import parse_difference
-        from relook.project.guessed import (
+        from relook.project.setup.guessed import (
             folder_beside,
             folder_for,
             guessed_project,

@@ -81,9 +81,9 @@ def queue(
 
         from relook.cli.screens.queue import queue_screen
         from relook.cli.targets import project_to_write
-        from relook.project.ordering import DEFAULT_SEED, settings_of_queue
-        from relook.project.queue_run import queue_object, run_queue
-        from relook.project.queueing import QueueRequest
+        from relook.project.figures.ordering import DEFAULT_SEED, settings_of_queue
+        from relook.project.sending.queue_run import queue_object, run_queue
+        from relook.project.sending.queueing import QueueRequest
 
         project, is_new = project_to_write(
             target, terminal, difference=difference, adjudicators=adjudicator, dry_run=dry_run

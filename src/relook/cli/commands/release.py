@@ -80,11 +80,11 @@ def release(
             release_object,
             release_screen,
         )
-        from relook.project.final_labels import TIES_RULES
-        from relook.project.folder import Project
-        from relook.project.ordering import DEFAULT_SEED
-        from relook.project.release_files import FOLDER, check_release, write_release
-        from relook.project.releasing import ReleaseRequest, make_release
+        from relook.project.figures.ordering import DEFAULT_SEED
+        from relook.project.release.final_labels import TIES_RULES
+        from relook.project.release.release_files import FOLDER, check_release, write_release
+        from relook.project.release.releasing import ReleaseRequest, make_release
+        from relook.project.setup.folder import Project
 
         opened = Project.open(project)
         folder = to if to is not None else Path(opened.shown_root) / FOLDER

@@ -22,7 +22,7 @@ from relook.errors import RelookError
 
 if TYPE_CHECKING:
     from relook.cli.terminal import Terminal
-    from relook.project.loading import Loaded
+    from relook.project.setup.loading import Loaded
 
 
 def rescore(
@@ -59,12 +59,12 @@ def rescore(
     """Show alpha before and agreement in the corrected data after, and what the decisions say."""
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.rescore import rescore_screen
-        from relook.project import rescoring
-        from relook.project.folder import Project, write_whole
-        from relook.project.loading import load
-        from relook.project.ordering import DEFAULT_SEED
-        from relook.project.rescore_report import report_of
-        from relook.project.rescore_tables import rescore_object
+        from relook.project.figures.ordering import DEFAULT_SEED
+        from relook.project.outcome import rescoring
+        from relook.project.outcome.rescore_report import report_of
+        from relook.project.outcome.rescore_tables import rescore_object
+        from relook.project.setup.folder import Project, write_whole
+        from relook.project.setup.loading import load
         from relook.worksheet.report import write_report
 
         opened = Project.open(project)
@@ -101,7 +101,11 @@ def _against(
 ) -> None:
     """Compare with corrected tables, and keep them."""
     from relook.cli.screens.correction import correction_screen
-    from relook.project.correcting import compare_with, correction_object, record_correction
+    from relook.project.corrections.correcting import (
+        compare_with,
+        correction_object,
+        record_correction,
+    )
 
     if xlsx is not None:
         raise RelookError(

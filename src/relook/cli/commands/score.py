@@ -66,14 +66,18 @@ def score(
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.score import score_screen
         from relook.cli.targets import open_target
-        from relook.project import scoring
-        from relook.project.folder import write_whole
-        from relook.project.item_table import item_table
-        from relook.project.label_mergers import parse_merge_group
-        from relook.project.loading import load, refuse_source
-        from relook.project.ordering import DEFAULT_SEED, settings_of_queue
-        from relook.project.requiring import refuse_changed_labels, required_alpha, shortfalls
-        from relook.project.score_object import changed_warning, score_object
+        from relook.project.figures import scoring
+        from relook.project.figures.item_table import item_table
+        from relook.project.figures.label_mergers import parse_merge_group
+        from relook.project.figures.ordering import DEFAULT_SEED, settings_of_queue
+        from relook.project.figures.requiring import (
+            refuse_changed_labels,
+            required_alpha,
+            shortfalls,
+        )
+        from relook.project.figures.score_object import changed_warning, score_object
+        from relook.project.setup.folder import write_whole
+        from relook.project.setup.loading import load, refuse_source
         from relook.tables.results import csv_bytes
 
         groups = [parse_merge_group(text) for text in merge or []]

@@ -17,8 +17,8 @@ def status(
     """Show rounds, worksheets out and back, decisions, splits, and what is next."""
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.status import status_object, status_screen
-        from relook.project.folder import Project
-        from relook.project.standing import standing_of
+        from relook.project.returning.standing import standing_of
+        from relook.project.setup.folder import Project
 
         opened = Project.open(project)
         standing = standing_of(opened)

@@ -32,8 +32,8 @@ def why(
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.why import why_screen
         from relook.cli.targets import open_target
-        from relook.project.explaining import explain, why_object
-        from relook.project.loading import load
+        from relook.project.figures.explaining import explain, why_object
+        from relook.project.setup.loading import load
 
         project = open_target(target, terminal, difference=difference)
         loaded = load(project, only=variable)

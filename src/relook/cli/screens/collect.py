@@ -8,10 +8,10 @@ from rich.console import RenderableType
 from rich.text import Text
 
 from relook.cli.screens.layout import counted, heading, note, shortened, small_table, stacked
-from relook.project.collected import Collected, RowReport
-from relook.project.folder import Project
-from relook.project.people import names_by_id
-from relook.project.rebuilding import Rebuilt
+from relook.project.returning.collected import Collected, RowReport
+from relook.project.returning.rebuilding import Rebuilt
+from relook.project.setup.folder import Project
+from relook.project.setup.people import names_by_id
 
 _SHOWN = 20
 

@@ -16,8 +16,8 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
-from relook.project.correcting import MOST_REMOVED, Correction, VariableCorrection
-from relook.project.label_versions import LabelVersion
+from relook.project.corrections.correcting import MOST_REMOVED, Correction, VariableCorrection
+from relook.project.corrections.label_versions import LabelVersion
 
 _SHOWN = 20
 

@@ -16,8 +16,8 @@ from relook.cli.screens.layout import (
     stacked,
 )
 from relook.core.proportions import clean_bound
-from relook.project.queue_run import QueueRun
-from relook.project.score_tables import defined
+from relook.project.figures.score_tables import defined
+from relook.project.sending.queue_run import QueueRun
 
 
 def queue_screen(run: QueueRun) -> RenderableType:

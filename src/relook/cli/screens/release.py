@@ -9,10 +9,10 @@ from rich.console import RenderableType
 from rich.text import Text
 
 from relook.cli.screens.layout import count, counted, heading, note, small_table, stacked
-from relook.project.corrected_tables import FOLDER as CORRECTED
-from relook.project.final_labels import SETTLED_BY
-from relook.project.release_files import ReleaseCheck
-from relook.project.releasing import METHODS, Release
+from relook.project.release.corrected_tables import FOLDER as CORRECTED
+from relook.project.release.final_labels import SETTLED_BY
+from relook.project.release.release_files import ReleaseCheck
+from relook.project.release.releasing import METHODS, Release
 
 
 def release_screen(held: Release, folder: Path, *, dry_run: bool) -> RenderableType:

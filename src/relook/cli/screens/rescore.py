@@ -18,9 +18,9 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
-from relook.project import rescore_sentences as sentences
-from relook.project.moves import CoderStanding, Move
-from relook.project.rescoring import Rescore, VariableRescore
+from relook.project.outcome import rescore_sentences as sentences
+from relook.project.outcome.moves import CoderStanding, Move
+from relook.project.outcome.rescoring import Rescore, VariableRescore
 
 _SHOWN = 12
 

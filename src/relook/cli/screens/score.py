@@ -21,11 +21,11 @@ from relook.cli.screens.layout import (
     stacked,
 )
 from relook.cli.screens.score_sources import sources
-from relook.project.label_mergers import CAUTION, MergedScore
-from relook.project.score_object import best_merger_rows, changed_warning, selected_row
-from relook.project.score_object import variable_warnings as warnings_of
-from relook.project.scoring import Score, VariableScore
-from relook.project.verdict import alpha_in_words, verdict
+from relook.project.figures.label_mergers import CAUTION, MergedScore
+from relook.project.figures.score_object import best_merger_rows, changed_warning, selected_row
+from relook.project.figures.score_object import variable_warnings as warnings_of
+from relook.project.figures.scoring import Score, VariableScore
+from relook.project.figures.verdict import alpha_in_words, verdict
 
 _FIRST_ITEMS = 10
 #: Rows of each small table: fewer where there are many variables, each of which has a page.

@@ -19,7 +19,7 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
-from relook.project.score_tables import (
+from relook.project.figures.score_tables import (
     Row,
     coder_pair_rows,
     coder_rows,
@@ -28,8 +28,8 @@ from relook.project.score_tables import (
     label_rows,
     prospect_rows,
 )
-from relook.project.scoring import VariableScore
-from relook.project.use_tables import (
+from relook.project.figures.scoring import VariableScore
+from relook.project.figures.use_tables import (
     cross_table_rows,
     direction_rows,
     higher_rows,

@@ -17,9 +17,9 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
-from relook.project.folder import Project
-from relook.project.people import names_by_id
-from relook.project.standing import Standing
+from relook.project.returning.standing import Standing
+from relook.project.setup.folder import Project
+from relook.project.setup.people import names_by_id
 
 _SHOWN = 12
 

@@ -19,7 +19,7 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
-from relook.project.explaining import Candidate, Explanation
+from relook.project.figures.explaining import Candidate, Explanation
 
 #: Labels that nobody gave and that the item could still be settled to: at most so many are shown.
 _FURTHER_CANDIDATES = 8

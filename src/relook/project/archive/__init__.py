@@ -1,0 +1,5 @@
+"""What a project keeps for good, rounds sent and decisions recorded, and what they settle.
+
+rounds: rounds, history, independence
+decisions: record, recorded, decidable, settlements
+"""

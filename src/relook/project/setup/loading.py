@@ -1,0 +1,160 @@
+"""A project's tables, read once and measured."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+import numpy.typing as npt
+import pandas as pd
+
+from relook.core.agreement import Agreement, measure_agreement
+from relook.core.differences import difference_function
+from relook.core.exact import IntArray
+from relook.errors import Place, Problem, RelookError
+from relook.project.setup.folder import Project
+from relook.project.setup.settings import SETTINGS_FILE
+from relook.tables.items import ItemData, read_items
+from relook.tables.labels import LabelData, VariableLabels, read_labels
+from relook.tables.schema import Variable
+
+Texts = npt.NDArray[np.object_]
+
+
+@dataclass(frozen=True, slots=True)
+class Loaded:
+    """A project with its labels and items.
+
+    Attributes
+    ----------
+    project : Project
+    labels : LabelData
+    items : ItemData or None
+    agreements : dict of str to Agreement
+        One per variable, in the order of the settings.
+    """
+
+    project: Project
+    labels: LabelData
+    items: ItemData | None
+    agreements: dict[str, Agreement]
+
+    @property
+    def problems(self) -> tuple[Problem, ...]:
+        """Warnings and notes of reading."""
+        return self.labels.problems + (self.items.problems if self.items is not None else ())
+
+    @property
+    def said(self) -> tuple[str, ...]:
+        """A line per file that was read: what it was taken for."""
+        return self.labels.said + (self.items.said if self.items is not None else ())
+
+    def item_numbers(self, items: Sequence[str]) -> IntArray:
+        """Return the index of each item's id, -1 for those without an entry in the label table."""
+        return pd.Index(self.labels.items).get_indexer(pd.Index(list(items), dtype=object))
+
+
+def load(project: Project, *, only: Sequence[str] | None = None) -> Loaded:
+    """Read a project's tables and measure agreement on each variable.
+
+    Parameters
+    ----------
+    project : Project
+    only : sequence of str, optional
+        Names of the variables to measure; all of them where left out.
+
+    Raises
+    ------
+    RelookError
+        Problems in the tables, all of them at once, or no such variable.
+    """
+    settings = project.settings
+    wanted = [settings.variable(name).name for name in only] if only else None
+    variables = [
+        variable for variable in settings.variables if wanted is None or variable.name in wanted
+    ]
+    labels = read_labels(settings.labels, variables, project.root)
+    items = read_items(settings.items, project.root) if settings.items is not None else None
+    agreements = {name: measure(held) for name, held in labels.variables.items()}
+    return Loaded(project, labels, items, agreements)
+
+
+def measure(held: VariableLabels) -> Agreement:
+    """Measure agreement on one variable's labels."""
+    variable: Variable = held.variable
+    function = difference_function(variable.difference, variable.options)
+    return measure_agreement(held.labels, function, held.values, tolerance=variable.tolerance)
+
+
+def refuse_source(loaded: Loaded, file: Path) -> None:
+    """Refuse to write where the project's own tables or settings lie, whatever is forced.
+
+    Raises
+    ------
+    RelookError
+        The file is one that relook reads.
+    """
+    project = loaded.project
+    read = [*loaded.labels.digests, *(loaded.items.digests if loaded.items is not None else ())]
+    if project.settings.project:
+        read.append(SETTINGS_FILE)
+    if file.resolve() in {(project.root / name).resolve() for name in read}:
+        raise RelookError(
+            "this file is one that relook reads",
+            where=Place(str(file)),
+            mend="choose another name for what is to be written",
+        )
+
+
+def item_texts(loaded: Loaded, column: str) -> Texts:
+    """Return a column of the item table for each labelled item, "" where the table has no entry.
+
+    Returns
+    -------
+    object array of shape (n_items,)
+    """
+    assert loaded.items is not None
+    texts = loaded.items.frame[column].reindex(loaded.labels.items).fillna("")
+    return texts.to_numpy(dtype=object)
+
+
+def shown_texts(loaded: Loaded, item: str) -> tuple[tuple[str, str], ...]:
+    """Return (column, text) of the shown columns of one item; nothing without an entry for it."""
+    source = loaded.project.settings.items
+    if loaded.items is None or source is None or item not in loaded.items.frame.index:
+        return ()
+    entry = loaded.items.frame.loc[item]
+    return tuple((column, str(entry[column])) for column in source.show)
+
+
+def labels_of_item(loaded: Loaded, variable: str, item: int) -> list[tuple[str, str]]:
+    """Return (coder, label) of one item, by coder; coders are "" in a table of counts."""
+    held = loaded.labels.variables[variable]
+    codes = held.labels
+    begin, end = np.searchsorted(codes.item_index, [item, item + 1])
+    coders = (
+        [""] * (end - begin)
+        if codes.coder_index is None
+        else [loaded.labels.coders[coder] for coder in codes.coder_index[begin:end]]
+    )
+    texts = [held.texts[value] for value in codes.value_index[begin:end]]
+    return sorted(zip(coders, texts, strict=True))
+
+
+def labels_digest(pairs: Sequence[tuple[str, str]]) -> str:
+    """Digest an item's labels, so that a later change of any of them shows.
+
+    Parameters
+    ----------
+    pairs : sequence of (coder, label)
+
+    Returns
+    -------
+    str
+        16 hexadecimal digits.
+    """
+    said = "\x1e".join(f"{coder}\x1f{label}" for coder, label in sorted(pairs))
+    return hashlib.sha256(said.encode("utf-8", errors="surrogatepass")).hexdigest()[:16]
