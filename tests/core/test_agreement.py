@@ -36,6 +36,7 @@ from relook.core.differences import (
     Values,
     difference_function,
 )
+from relook.core.labels import CodedLabels
 from relook.core.profiles import Profiles
 from relook.errors import RelookError
 
@@ -436,3 +437,12 @@ def test_ten_million_labels_of_one_profile_do_not_overflow(difference):
     assert [Fraction(int(w), bound.denominator) for w in bound.within(profiles)] == within
     toward = [delta(0, 1), 2 * delta(0, 1), 2 * delta(1, 2), delta(1, 2), delta(0, 2), delta(0, 2)]
     assert [Fraction(int(t), bound.denominator) for t in bound.toward_item(profiles)] == toward
+
+
+def test_counts_have_no_coders() -> None:
+    """A table of counts has labels of nobody in particular; else coders with a label count."""
+    items, values = np.array([0, 0, 1]), np.array([0, 1, 1])
+    counts = CodedLabels.from_codes(items, values)
+    assert measure_agreement(counts, DIFFERENCE_FUNCTIONS["nominal"]).n_coders == 0
+    coded = CodedLabels.from_codes(items, values, np.array([0, 3, 3]), n_coders=9)
+    assert measure_agreement(coded, DIFFERENCE_FUNCTIONS["nominal"]).n_coders == 2

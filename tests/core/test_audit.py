@@ -18,6 +18,7 @@ from relook.core.audit import (
 )
 from relook.core.differences import DIFFERENCE_FUNCTIONS
 from relook.core.labels import CodedLabels
+from relook.errors import RelookError
 
 
 def test_items_fall_into_the_strata_that_would_be_released_undecided() -> None:
@@ -133,3 +134,20 @@ def test_estimates_cover_simulated_audits() -> None:
 def test_slips_make_a_nearly_clean_release_look_worse() -> None:
     """1 % true with 3 % slips shows .01 × .97 + .99 × .03 = 3.94 %; arithmetic, no source."""
     assert SLIP_EXAMPLE.share_shown == pytest.approx(0.0394, abs=1e-12)
+
+
+def test_small_strata_take_from_the_large_one() -> None:
+    """One each of three strata of one item, by hand: 5 draws of 1, 1, 100 are 1, 1 and 3."""
+    assert allocate(np.array([1, 1, 100]), 5).tolist() == [1, 1, 3]
+
+
+def test_no_draws_and_fewer_draws_than_strata() -> None:
+    """Nothing for nothing; what there is goes to the largest strata."""
+    assert allocate(np.array([5, 7, 6]), 0).tolist() == [0, 0, 0]
+    assert allocate(np.array([5, 7, 6]), 2).tolist() == [0, 1, 1]
+
+
+def test_a_negative_number_of_draws_is_refused() -> None:
+    """It is no number of items."""
+    with pytest.raises(RelookError, match="`n` must be 0 or more; got -1"):
+        draw_audit(np.array([0, 0]), -1, np.random.default_rng(1))

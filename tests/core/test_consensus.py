@@ -154,3 +154,26 @@ def test_no_items_have_no_consensus() -> None:
     for name in ("nominal", "ordinal", "interval"):
         got = consensus_of(profiles, DIFFERENCE_FUNCTIONS[name], Values.from_numbers([]))
         assert got.value_index.size == got.tie.size == 0
+
+
+def test_a_mean_exists_of_numbers_only() -> None:
+    """1, 2 and 2 have the exact mean 5/3; a plurality has none."""
+    values = Values.from_numbers([1, 2])
+    got, profile = consensus([[0, 1, 1]], DIFFERENCE_FUNCTIONS["interval"], values)[0]
+    assert got.mean(profile) == Fraction(5, 3)
+    got, profile = consensus([[0, 1, 1]], DIFFERENCE_FUNCTIONS["nominal"], values)[0]
+    assert got.mean(profile) is None
+
+
+def test_functions_without_their_options_have_no_consensus() -> None:
+    """A circle needs its period, sets their texts and separator."""
+    with pytest.raises(RelookError, match="circular differences need a period"):
+        consensus([[0, 1]], DIFFERENCE_FUNCTIONS["circular"], Values.from_numbers([1, 2]))
+    with pytest.raises(RelookError, match="their separator"):
+        consensus([[0, 1]], Jaccard(";"), Values(2))
+
+
+def test_no_items_have_no_majority_either() -> None:
+    """An empty table of sets."""
+    profiles, _ = collapse(CodedLabels.from_codes(np.zeros(0, np.int64), np.zeros(0, np.int64)))
+    assert consensus_of(profiles, Jaccard(";"), Values.from_texts([])).value_index.size == 0

@@ -349,3 +349,18 @@ def test_distance_to_the_item_sums_to_the_whole():
         np.testing.assert_allclose(
             summed.astype(float), bound.within(profiles).astype(float), rtol=1e-12, atol=1e-14
         )
+
+
+@pytest.mark.parametrize(
+    ("name", "options"),
+    [("ratio", {}), ("polar", {"ends": [0, 9]}), ("table", {"table": ENTRIES})],
+)
+def test_bare_codes_have_nothing_to_check(name, options):
+    """Values of which neither text nor number is known cannot be out of bounds."""
+    assert difference_function(name, options).check(Values(3)) == []
+
+
+def test_words_have_no_coordinates():
+    """Labels that are words are refused where numbers are asked for."""
+    with pytest.raises(RelookError, match="these labels are words, not numbers"):
+        Values.from_texts(["a", "b"]).numbers()

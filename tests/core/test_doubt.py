@@ -14,12 +14,14 @@ from relook.core.doubt import (
     NO_THIRD_LABEL,
     NOT_DISCRETE,
     TOO_FEW_CODERS,
+    TOO_LARGE,
     Doubt,
     estimate_doubt,
     fit_coders,
     no_ground,
 )
 from relook.core.labels import CodedLabels
+from relook.errors import RelookError
 
 
 def dawid_and_skene() -> CodedLabels:
@@ -234,3 +236,20 @@ def test_the_order_of_the_labels_does_not_matter() -> None:
         labels.item_index[order], labels.value_index[order], labels.coder_index[order]
     )
     assert doubt_of(again).doubt == pytest.approx(doubt_of(labels).doubt, abs=1e-9)
+
+
+def test_doubt_that_is_undefined_ranks_nothing() -> None:
+    """Two coders: no doubt, so none to rank by."""
+    assert doubt_of(crowd(8, 20, 2, 3, 2)).for_ranking is None
+
+
+def test_counts_have_no_coders_to_fit() -> None:
+    """The model is of coders."""
+    with pytest.raises(RelookError, match="counts"):
+        fit_coders(CodedLabels.from_codes(np.array([0, 0]), np.array([0, 1])))
+
+
+def test_tables_beyond_the_limit_are_left_out(monkeypatch: pytest.MonkeyPatch) -> None:
+    """So many items × values are not held in memory, and that is said."""
+    monkeypatch.setattr("relook.core.doubt._LARGEST_TABLE", 100)
+    assert doubt_of(crowd(8, 200, 4, 3, 6)).undefined_because == TOO_LARGE

@@ -6,7 +6,8 @@ import pytest
 from reference import by_definition as twin
 from reference.cases import CASES, measured, tables
 from reference.published import counts_table, example, two_coder_table
-from relook.core.label_tables import cross_table, label_table, label_use
+from relook.core.contributions import PairParts, label_pair_parts
+from relook.core.label_tables import chance_shares, cross_table, label_table, label_use
 
 
 def test_alpha_against_the_rest_is_alpha_of_two_values():
@@ -62,3 +63,28 @@ def test_cross_table_of_two_coders():
     agreement, _ = measured(two_coder_table(cells))
     assert cross_table(agreement, 0, 1).tolist() == cells
     assert cross_table(agreement, 1, 0).tolist() == np.transpose(cells).tolist()
+
+
+@pytest.mark.parametrize("name", ["nominal", "ordinal", "interval"])
+def test_shares_by_chance_are_the_terms_of_expected_disagreement(name):
+    """Each pair's share of D_e is its term of the definition's sum, by the twin; they add up to 1."""
+    for table, agreement, data in tables(name, 20):
+        pairs = label_pair_parts(agreement)
+        found = chance_shares(agreement, pairs)
+        whole = twin.alpha_by_definition(table, CASES[name][0])
+        if not whole.expected:
+            assert not found.any()
+            continue
+        terms = twin.expected_pair_parts(table, CASES[name][0])
+        for first, second, share in zip(pairs.first, pairs.second, found, strict=True):
+            pair = frozenset((data.values[first], data.values[second]))
+            assert share == pytest.approx(float(terms[pair] / whole.expected), rel=1e-12)
+        assert sum(terms.values()) == whole.expected
+
+
+def test_no_disagreement_by_chance_has_no_shares():
+    """One label only: D_e is 0, and so is each pair's share of it."""
+    agreement, _ = measured({1: [("A", 1), ("B", 1)], 2: [("A", 2)]})
+    assert agreement.expected_disagreement == 0
+    pairs = PairParts(*(np.array([each]) for each in (0, 1, 0.0, 0.0, 0)))
+    assert chance_shares(agreement, pairs).tolist() == [0.0]

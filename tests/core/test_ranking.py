@@ -265,3 +265,44 @@ def test_nothing_disputed_gives_an_empty_ranking() -> None:
     assert got.row_start.tolist() == [0]
     assert got.carried_in_all == 0.0
     assert got.rank_of_item(2).tolist() == [0, 0]
+
+
+@pytest.mark.parametrize(
+    ("how", "said"),
+    [
+        ({"variables": []}, "`variables` must hold at least one variable; got none"),
+        ({"weight": -1.0}, 'the weight of "v" must not be negative'),
+        ({"hashes": 3}, "`item_hash` must have 2 entries"),
+    ],
+)
+def test_what_cannot_be_ranked_is_refused(how: dict[str, Any], said: str) -> None:
+    """Each says what was wrong with what it got."""
+    agreement = measured([[0, 1], [0, 0]])
+    variables = [RankedVariable(name="v", agreement=agreement, weight=how.get("weight", 1.0))]
+    with pytest.raises(RelookError, match=said):
+        rank_items(how.get("variables", variables), np.arange(how.get("hashes", 2)))
+
+
+def test_a_variable_without_doubt_leaves_the_order_to_the_others() -> None:
+    """By doubt, over two variables of which one has it: 0.4 before 0.1, at equal contribution."""
+    agreement = measured([[0, 1], [0, 1], [0, 0]])
+    got = rank_items(
+        [
+            RankedVariable(name="a", agreement=agreement, doubt=np.array([0.1, 0.4, 0.0])),
+            RankedVariable(name="b", agreement=agreement),
+        ],
+        np.arange(3),
+        rank_by="doubt",
+    )
+    assert got.item_index.tolist() == [1, 0]
+
+
+def test_a_variable_that_nobody_answered_twice_takes_no_rows() -> None:
+    """Single labels have no disagreement to weigh; the other variable ranks alone."""
+    single = measured([[0], [1], []])
+    other = measured([[0, 1], [0, 0], [1, 1]])
+    got = rank_items(
+        [RankedVariable(name="a", agreement=single), RankedVariable(name="b", agreement=other)],
+        np.arange(3),
+    )
+    assert (got.item_index.tolist(), got.row_variable.tolist()) == ([0], [1])

@@ -363,3 +363,11 @@ def test_many_values_take_no_table_of_pairs(monkeypatch):
     blocks = alpha_interval(agreement, rng(7)).interval
     assert blocks.low == pytest.approx(tabled.low, rel=1e-10)
     assert blocks.high == pytest.approx(tabled.high, rel=1e-10)
+
+
+def test_one_item_gives_no_unpaired_interval():
+    """Drawing one item with replacement gives it back."""
+    lone, _ = measured({1: [("A", 1), ("B", 2)]})
+    many, _ = measured({1: [("A", 1), ("B", 2)], 2: [("A", 1), ("B", 1)], 3: [("A", 2), ("B", 2)]})
+    found = unpaired_interval(many, lone, rng=rng(), resamples=50, seed=1)
+    assert (found.interval, found.none_because) == (None, ONE_TO_DRAW)

@@ -126,3 +126,41 @@ def test_limits_out_of_range_are_refused(how: dict[str, Any], said: str) -> None
     """Each names itself and what it got."""
     with pytest.raises(RelookError, match=said):
         select_head(ranking(40), **how)
+
+
+def test_variables_that_lead_as_often_share_the_sentence() -> None:
+    """Two variables of the same labels, one disputed item each: both filled the queue."""
+    item = np.repeat(np.arange(4), 2)
+    a = CodedLabels.from_codes(item, np.array([0, 1, 0, 0, 1, 1, 0, 0]), n_values=2)
+    b = CodedLabels.from_codes(item, np.array([0, 0, 0, 1, 1, 1, 0, 0]), n_values=2)
+    variables = [
+        RankedVariable(name=n, agreement=measure_agreement(labels, DIFFERENCE_FUNCTIONS["nominal"]))
+        for n, labels in (("a", a), ("b", b))
+    ]
+    ranked = rank_items(variables, np.arange(4))
+    assert (
+        select_head(ranked, top=2)
+        .sentence(ranked)
+        .endswith('"a" and "b" filled the queue: heaviest in 1 of 2 each')
+    )
+
+
+def test_the_sentence_of_nothing_has_no_share() -> None:
+    """Nothing disputed: neither a share nor a variable that filled the queue."""
+    item = np.repeat(np.arange(2), 2)
+    agreed = CodedLabels.from_codes(item, np.array([0, 0, 1, 1]), n_values=2)
+    agreement = measure_agreement(agreed, DIFFERENCE_FUNCTIONS["nominal"])
+    variables = [RankedVariable(name=name, agreement=agreement) for name in "ab"]
+    ranked = rank_items(variables, np.arange(2))
+    got = select_head(ranked)
+    assert got.sentence(ranked) == "0 of 0 disputed items; that is all of them"
+
+
+def test_hours_that_just_fit_are_used_up() -> None:
+    """A tenth more rulings than items: 100 rulings pay for 90 items and 9 second rulings of them.
+
+    91 items would need 91 + 10 rulings, by hand.
+    """
+    got = select_head(ranking(200), hours=1, seconds_per_item=36, overlap=0.1)
+    assert got.n_items == 90
+    assert got.seconds == 99 * 36

@@ -25,6 +25,7 @@ from relook.core.differences import (
     Tree,
     Values,
 )
+from relook.core.labels import CodedLabels
 from relook.core.settling import (
     CANNOT_BE_CODED,
     agreement_after,
@@ -32,6 +33,7 @@ from relook.core.settling import (
     prospect,
     settled_alphas,
 )
+from relook.errors import RelookError
 
 CHECKS = [
     (name, level)
@@ -281,3 +283,19 @@ def test_where_nothing_is_pairable_everything_is_undefined() -> None:
     assert got.undefined_because == NOTHING_PAIRABLE
     alone = settled_alphas(agreement, agreement.profile_of_item, np.array([1, 0]))
     assert alone.undefined_because == NOTHING_PAIRABLE
+
+
+def test_an_item_without_labels_is_not_settled() -> None:
+    """It has no consensus label."""
+    labels = CodedLabels.from_codes(np.array([0, 0]), np.array([0, 1]), n_items=2)
+    agreement = measure_agreement(labels, DIFFERENCE_FUNCTIONS["nominal"])
+    consensus = consensus_of(agreement.profiles, DIFFERENCE_FUNCTIONS["nominal"], Values(2))
+    with pytest.raises(RelookError, match="an item without labels cannot be settled"):
+        prospect(agreement, np.array([0, 1]), consensus)
+
+
+def test_no_cases_have_no_sums() -> None:
+    """Nothing in, nothing out, of the same kind."""
+    none = np.zeros(0, dtype=np.int64)
+    got = settled_base.case_sums(none, none)
+    assert (got.size, got.dtype) == (0, np.int64)

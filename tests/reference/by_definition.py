@@ -175,6 +175,19 @@ def alpha_by_definition(table: Table, delta: Delta) -> Figures:
     return Figures(1 - observed / expected if expected else None, observed, expected, n)
 
 
+def expected_pair_parts(table: Table, delta: Delta) -> dict[frozenset[Any], Number]:
+    """Return the part of D_e of each unordered pair of values, a value with itself as a set of one."""
+    difference = delta(table)
+    counts = marginals(table)
+    n = sum(counts.values())
+    sums: dict[frozenset[Any], Number] = {}
+    for c in counts:
+        for k in counts:
+            part = counts[c] * counts[k] * difference(c, k) / (n * (n - 1))
+            sums[frozenset({c, k})] = sums.get(frozenset({c, k}), Fraction(0)) + part
+    return sums
+
+
 # ------------------------------------------------------------------------------- parts of D_o
 
 

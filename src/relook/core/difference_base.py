@@ -372,10 +372,9 @@ class DifferenceFunction(ABC):
         if not faults:
             return
         code, reason = faults[0]
-        label = f"value {code}"
         if values.texts is not None:
             label = f'"{values.texts[code]}"'
-        elif values.numerators is not None:
-            label = str(Fraction(int(values.numerators[code]), values.denominator))
+        else:
+            label = str(Fraction(int(self._numbers(values)[code]), values.denominator))
         more = "" if len(faults) == 1 else f" (and {len(faults) - 1:,} more)"
         raise RelookError(f"{self.name} differences: {label} {reason}{more}")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from fractions import Fraction
 from math import ceil, floor
 from typing import Literal
 
@@ -218,15 +219,19 @@ def _shortest_head(ranking: Ranking, share: float) -> int:
 
 
 def _n_rulings(n: int, overlap: float, n_audit_items: int) -> int:
-    return n + ceil(n * overlap - 1e-9) + n_audit_items
+    return n + ceil(n * _exact(overlap)) + n_audit_items
+
+
+def _exact(share: float) -> Fraction:
+    """A share as it was written: 0.1 is a tenth, so that ten times it is 1 and no more."""
+    return Fraction(share).limit_denominator(1_000_000)
 
 
 def _within_hours(hours: float, seconds: float, overlap: float, n_audit_items: int) -> int:
     """The most items that fit, audit items and overlap paid for first."""
     rulings = floor(hours * 3600 / seconds + 1e-9)
-    n = max(0, floor((rulings - n_audit_items) / (1 + overlap) + 1e-9))
-    while n > 0 and _n_rulings(n, overlap, n_audit_items) > rulings:
-        n -= 1
+    # n + ceil(n × overlap) ≤ rulings if and only if n × (1 + overlap) ≤ rulings.
+    n = max(0, floor((rulings - n_audit_items) / (1 + _exact(overlap))))
     if n == 0:
         raise RelookError(
             f"{hours:g} hours at {seconds:g} seconds an item leave no time for a disputed item "
