@@ -260,3 +260,23 @@ def test_single_label_items_are_sent_when_asked_for(ferry, capsys):
     rows = json.loads((ferry / "rounds/01/round.json").read_text(encoding="utf-8"))["rows"]
     single = {row["item"] for row in rows if row["stratum"] == "single"}
     assert single == {"r084", "r096", "r186", "r229", "r267", "r275"}
+
+
+def test_a_clean_audit_reaches_the_limit_that_queue_promised(tmp_path, capsys):
+    """All audit items upheld: the interval's upper end is what `queue` said it would be."""
+    labels = [
+        f"i{item:03d},c{coder},{'b' if (item % 3 == 0 and coder == 2) or item % 5 == 0 else 'a'}"
+        for item in range(90)
+        for coder in range(3)
+    ]
+    table = tmp_path / "labels.csv"
+    table.write_text("item,coder,label\n" + "\n".join(labels) + "\n", encoding="utf-8")
+    _, queued = json_of(capsys, "queue", table, "--top", 9, "--audit", 12)
+    project = tmp_path / "labels-relook"
+    fill_round(project, lambda item, variable: "b" if int(item[1:]) % 5 == 0 else "a")
+    json_of(capsys, "collect", project)
+    _, after = json_of(capsys, "rescore", project)
+    audit = after["audit"]
+    assert (audit["share_ruled_otherwise"], audit["low"]) == (0, 0)
+    assert audit["high"] == queued["audit_limit_if_all_upheld"]
+    assert 0 < audit["high"] < 0.5

@@ -15,7 +15,6 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
-from relook.core.proportions import clean_bound
 from relook.project.figures.score_tables import defined
 from relook.project.sending.queue_run import QueueRun
 
@@ -34,11 +33,17 @@ def queue_screen(run: QueueRun) -> RenderableType:
             note(f"Second opinions: {counted(len(seconds), 'row')} that rulings differ on.")
         )
     if planned.n_audit_items:
+        limit = planned.limit_if_all_upheld
+        clean = (
+            ""
+            if limit is None
+            else " If all are upheld, the share of those that would not be lies below "
+            f"{limit:.0%} (95% interval, strata weighed by their sizes)."
+        )
         parts.append(
             note(
                 f"Audit: {counted(planned.n_audit_items, 'item')} drawn at random from those that "
-                "would be released without a decision. If all are upheld, the share that is not "
-                f"lies below {clean_bound(planned.n_audit_items):.0%} (95%, one-sided)."
+                f"would be released without a decision.{clean}"
             )
         )
     if ordering.selection.n_items:

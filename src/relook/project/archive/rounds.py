@@ -7,6 +7,7 @@ from collections.abc import Mapping
 from dataclasses import asdict, dataclass, field
 from typing import Any
 
+from relook.core.audit import STRATA, Stratum
 from relook.errors import Place, RelookError
 from relook.project.setup.folder import Project
 
@@ -92,6 +93,22 @@ class RoundStratum:
     stratum: str
     n_items: int
     n_drawn: int
+
+
+def stratum_of(name: str) -> Stratum:
+    """Return a stratum by the name that a round keeps.
+
+    Raises
+    ------
+    RelookError
+        The round was written by a later relook.
+    """
+    for stratum in STRATA:
+        if stratum == name:
+            return stratum
+    raise RelookError(
+        f'a round names the stratum "{name}", which this relook does not know', mend="update relook"
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -12,12 +12,11 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
-from relook.core.audit import STRATA, AuditResult, Stratum, estimate
+from relook.core.audit import AuditResult, Stratum, estimate
 from relook.core.decisions import Settlement, number_of
 from relook.core.proportions import weighted_interval
-from relook.errors import RelookError
 from relook.project.archive.decidable import takes_numbers
-from relook.project.archive.rounds import Round, RoundRow
+from relook.project.archive.rounds import Round, RoundRow, stratum_of
 from relook.project.figures.consensus_texts import consensus_for, consensus_text
 from relook.project.setup.loading import Loaded
 from relook.tables.numbers import parse_number
@@ -154,7 +153,7 @@ def _audit(
         settlement = settled.get((item, name))
         if settlement is None or settlement.state == "open" or item not in stands:
             continue
-        stratum = _stratum(row.stratum)
+        stratum = stratum_of(row.stratum)
         ruled[stratum] += 1
         label = stands[item]
         if label is None:
@@ -162,7 +161,9 @@ def _audit(
         elif is_otherwise(settlement, label, _tolerance(loaded, name)):
             otherwise[stratum] += 1
             n_unresolved += settlement.state in ("split", "unconfirmed")
-    sizes = {_stratum(each.stratum): each.n_items for each in held.strata if each.variable == name}
+    sizes = {
+        stratum_of(each.stratum): each.n_items for each in held.strata if each.variable == name
+    }
     return AuditFindings(
         variable=name,
         round=held.number,
@@ -207,12 +208,3 @@ def _plain(text: str, decimal: str) -> str:
 def _tolerance(loaded: Loaded, name: str) -> Fraction | None:
     variable = loaded.labels.variables[name].variable
     return variable.tolerance if takes_numbers(variable) else None
-
-
-def _stratum(name: str) -> Stratum:
-    for stratum in STRATA:
-        if stratum == name:
-            return stratum
-    raise RelookError(
-        f'a round names the stratum "{name}", which this relook does not know', mend="update relook"
-    )

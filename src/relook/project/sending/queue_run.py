@@ -6,7 +6,6 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from relook.core.proportions import clean_bound
 from relook.project.archive.history import History
 from relook.project.archive.record import read_record
 from relook.project.archive.rounds import read_rounds
@@ -138,7 +137,7 @@ def queue_object(run: QueueRun) -> Row:
         "n_disputed_items": selection.n_items,
         "n_rows": planned.n_rows,
         "n_audit_items": planned.n_audit_items,
-        "clean_audit_bound": clean_bound(planned.n_audit_items) if planned.n_audit_items else None,
+        "audit_limit_if_all_upheld": planned.limit_if_all_upheld,
         "bound_by": selection.bound_by,
         "variables": [
             {

@@ -11,10 +11,11 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from relook.core.audit import estimate
 from relook.core.decisions import LEAD
 from relook.errors import ExitCode, RelookError, listed, nearest
 from relook.project.archive.history import History
-from relook.project.archive.rounds import RoundStratum
+from relook.project.archive.rounds import RoundStratum, stratum_of
 from relook.project.figures.ordering import Ordering, order_items, overlap_of
 from relook.project.sending.round_items import (
     audit_items,
@@ -98,6 +99,26 @@ class PlannedRound:
     def n_rows(self) -> int:
         """Rows of all worksheets together, doubled ones twice."""
         return sum(len(sheet.rows) for sheet in self.plan.worksheets)
+
+    @property
+    def limit_if_all_upheld(self) -> float | None:
+        """The upper limit of what a clean audit says, of the worst variable; None without one.
+
+        It is what `rescore` will show if no audit item is ruled otherwise: the limit weighs the
+        strata by their sizes, and so is wider than that of one sample of as many items.
+        """
+        limits = [
+            estimate(
+                {stratum_of(each.stratum): each.n_items for each in strata},
+                {stratum_of(each.stratum): each.n_drawn for each in strata},
+                {},
+            ).high
+            for strata in (
+                [each for each in self.strata if each.variable == name]
+                for name in dict.fromkeys(each.variable for each in self.strata)
+            )
+        ]
+        return max((limit for limit in limits if limit is not None), default=None)
 
 
 def plan_round(
