@@ -19,6 +19,7 @@ import pandas as pd
 
 from relook.core.exact import BoolArray, IntArray
 from relook.errors import Place, Problem, RelookError
+from relook.tables.arrow_columns import arrow_column, maybe_blank, read_regular
 
 DELIMITERS = (",", ";", "\t", "|")
 _NAMES = {",": "comma", ";": "semicolon", "\t": "tab", "|": "bar"}
@@ -104,8 +105,11 @@ def read_delimited(data: bytes, file: str, delimiter: str | None = None) -> Cell
             where=Place(file),
             mend='use one character, such as "," ";" "|" or a tab',
         )
-    if not data.strip():
+    if not data or data.isspace():
         raise RelookError("the file is empty", where=Place(file), mend="give a table with a header")
+    even = _even(data, delimiter)
+    if even is not None:
+        return drop_blank(even)
     shape = _choose(data, file, delimiter)
     if shape.ragged.size:
         raise RelookError.from_problems(_ragged_problems(shape, file))
@@ -114,10 +118,37 @@ def read_delimited(data: bytes, file: str, delimiter: str | None = None) -> Cell
     header = tuple(frame.iloc[shape.header_at])
     frame = frame.iloc[shape.header_at + 1 :]
     rows = np.arange(shape.header_at + 2, shape.header_at + 2 + len(frame))
-    said = f"delimiter {_NAMES.get(shape.delimiter, shape.delimiter)}"
-    if shape.width == 1 and delimiter is None:
-        said = "one column"
+    said = _said(shape.delimiter, shape.width, told=delimiter is not None)
     return drop_blank(Cells(header, frame, rows, said, shape.delimiter))
+
+
+def _said(delimiter: str, width: int, *, told: bool) -> str:
+    if width == 1 and not told:
+        return "one column"
+    return f"delimiter {_NAMES.get(delimiter, delimiter)}"
+
+
+def _even(data: bytes, delimiter: str | None) -> Cells | None:
+    """Read a file that can be read in one way only, without counting its cells first.
+
+    None where there is a choice of delimiters, a quote, a row of another width, or no header in the
+    first row; and where pyarrow is not installed. The reader refuses uneven rows itself.
+    """
+    found = [one for one in DELIMITERS if one.encode() in data]
+    chosen = delimiter or (found[0] if found else ",")
+    if ord(chosen) > 127 or b"\n" not in data or (delimiter is None and len(found) > 1):
+        return None
+    first = data[: data.index(b"\n")].decode("utf-8").removesuffix("\r")
+    header = tuple(first.split(chosen))
+    if not first.strip(" \t\r\n" + chosen):
+        return None
+    frame = read_regular(data, chosen, len(header), skip_rows=1)
+    lines = data.count(b"\n") + (not data.endswith(b"\n"))
+    if frame is None or len(frame) + 1 != lines:
+        return None
+    rows = np.arange(2, 2 + len(frame), dtype=np.int32)
+    said = _said(chosen, len(header), told=delimiter is not None)
+    return Cells(header, frame, rows, said, chosen)
 
 
 def drop_blank(cells: Cells) -> Cells:
@@ -125,23 +156,20 @@ def drop_blank(cells: Cells) -> Cells:
     frame = cells.frame
     blank: BoolArray = np.ones(len(frame), dtype=bool)
     for column in frame.columns:
+        arrow = arrow_column(frame[column])
+        if arrow is not None:
+            blank &= maybe_blank(arrow)
         if not blank.any():
-            break
+            return replace(cells, frame=frame.reset_index(drop=True))
+    for column in frame.columns:
         at = np.flatnonzero(blank)
-        blank[at] = _blank_cells(frame[column])[at]
+        if at.size == 0:
+            break
+        blank[at] = [not text.strip() for text in frame[column].iloc[at].to_numpy(dtype=object)]
     if not blank.any():
         return replace(cells, frame=frame.reset_index(drop=True))
     keep = ~blank
     return replace(cells, frame=frame[keep].reset_index(drop=True), rows=cells.rows[keep])
-
-
-def _blank_cells(column: pd.Series) -> BoolArray:
-    """Whether each cell is empty or spaces; of categories each text is looked at once."""
-    if isinstance(column.dtype, pd.CategoricalDtype):
-        texts = column.cat.categories.to_numpy(dtype=object)
-        blank = np.fromiter((not text.strip() for text in texts), dtype=bool, count=len(texts))
-        return blank[column.cat.codes.to_numpy()]
-    return (column.str.strip() == "").to_numpy(dtype=bool)
 
 
 def frame_of_text(records: Sequence[Sequence[str]], width: int) -> pd.DataFrame:
@@ -232,7 +260,7 @@ def _quotes_whole_cells(array: npt.NDArray[np.uint8], delimiter: int) -> bool:
 
 def _quick(data: bytes, shape: _Shape) -> pd.DataFrame | None:
     """Read a regular file; None where the reader counts other rows than the bytes show."""
-    frame = _encoded(data, shape)
+    frame = read_regular(data, shape.delimiter, shape.width)
     if frame is not None and len(frame) == shape.widths.size:
         return frame
     frame = pd.read_csv(
@@ -250,42 +278,6 @@ def _quick(data: bytes, shape: _Shape) -> pd.DataFrame | None:
         engine="c",
     )
     return frame if len(frame) == shape.widths.size else None
-
-
-def _encoded(data: bytes, shape: _Shape) -> pd.DataFrame | None:
-    """Read a file without quotes straight into categories, each text held once.
-
-    Without a quote, a lone carriage return or a NUL there is one way only to read the bytes, so
-    the quicker reader of the extra `fast` sees what the other would see. None where it is not
-    installed, or the bytes leave room for doubt.
-    """
-    lone_return = b"\r" in data and data.count(b"\r") != data.count(b"\r\n")
-    if b'"' in data or b"\0" in data or lone_return:
-        return None
-    try:
-        import pyarrow as pa
-        from pyarrow import csv as arrow_csv
-    except ImportError:
-        return None
-    names = [str(column) for column in range(shape.width)]
-    try:
-        table = arrow_csv.read_csv(
-            pa.BufferReader(data),
-            read_options=arrow_csv.ReadOptions(column_names=names, block_size=1 << 24),
-            parse_options=arrow_csv.ParseOptions(
-                delimiter=shape.delimiter, quote_char=False, ignore_empty_lines=False
-            ),
-            convert_options=arrow_csv.ConvertOptions(
-                column_types=dict.fromkeys(names, pa.dictionary(pa.int32(), pa.string())),
-                strings_can_be_null=False,
-                null_values=[],
-            ),
-        )
-    except pa.ArrowInvalid:
-        return None
-    frame: pd.DataFrame = table.unify_dictionaries().to_pandas()
-    frame.columns = pd.Index(range(shape.width))
-    return frame
 
 
 def _careful(data: bytes, file: str, shape: _Shape) -> pd.DataFrame:

@@ -62,6 +62,8 @@ def decode(data: bytes, file: str, encoding: str | None = None) -> Decoded:
             return _decode_as(data, file, name)
     if b"\x00" in data:
         return _decode_unmarked_wide(data, file)
+    if data.isascii():  # far quicker to see than to decode
+        return Decoded(data, "utf-8")
     try:
         data.decode("utf-8")
     except UnicodeDecodeError as fault:

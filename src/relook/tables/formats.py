@@ -15,6 +15,7 @@ import pandas as pd
 
 from relook.cells.model import Book, Cell, Sheet
 from relook.errors import Place, Problem, RelookError, listed, nearest
+from relook.tables.arrow_columns import frame_of_columns
 from relook.tables.delimited import Cells, drop_blank, frame_of_text
 from relook.tables.headers import fold, letter
 
@@ -254,23 +255,30 @@ def read_parquet(data: bytes, file: str) -> Cells:
                 where=Place(file, column=name),
                 mend="write a column of text, lists joined by a separator",
             )
-        columns[at] = pd.Series(_arrow_texts(column, pa), dtype="str")
-    frame = pd.DataFrame(columns)
-    rows = np.arange(2, 2 + len(frame))
+        columns[at] = _arrow_texts(column, pa)
+    frame = frame_of_columns(columns)
+    rows = np.arange(2, 2 + len(frame), dtype=np.int32)
     return drop_blank(Cells(tuple(table.column_names), frame, rows, "Parquet"))
 
 
-def _arrow_texts(column: Any, pa: Any) -> list[str]:
-    """Texts of an Arrow column: whole floats without ".0", missing values empty."""
+def _arrow_texts(column: Any, pa: Any) -> Any:
+    """An Arrow column as one of texts: whole floats without ".0", missing values empty."""
     if pa.types.is_dictionary(column.type):
         column = column.cast(column.type.value_type)
+    if pa.types.is_string(column.type):
+        return column if column.null_count == 0 else column.fill_null("")
+    # What a value is called is worked out once for each that occurs.
+    encoded = column.combine_chunks().dictionary_encode(null_encoding="encode")
+    values = encoded.dictionary.to_pylist()
     if pa.types.is_floating(column.type):
-        return [_float_text(value) for value in column.to_pylist()]
-    if pa.types.is_boolean(column.type):
-        return ["" if value is None else str(value).lower() for value in column.to_pylist()]
-    if pa.types.is_binary(column.type) or pa.types.is_large_binary(column.type):
-        return ["" if v is None else v.decode("utf-8", "replace") for v in column.to_pylist()]
-    return ["" if value is None else str(value) for value in column.to_pylist()]
+        texts = [_float_text(value) for value in values]
+    elif pa.types.is_boolean(column.type):
+        texts = ["" if value is None else str(value).lower() for value in values]
+    elif pa.types.is_binary(column.type) or pa.types.is_large_binary(column.type):
+        texts = ["" if v is None else v.decode("utf-8", "replace") for v in values]
+    else:
+        texts = ["" if value is None else str(value) for value in values]
+    return pa.chunked_array([pa.array(texts, pa.string()).take(encoded.indices)])
 
 
 def _float_text(value: float | None) -> str:

@@ -237,7 +237,8 @@ def _long_item(view: View, told: Mapping[str, Any], coder: Sketch | None, by_fil
 def _repeats(first: IntArray, second: IntArray) -> int:
     """Rows whose pair of codes stood in an earlier row already."""
     pair = first.astype(np.int64) * (int(second.max(initial=0)) + 1) + second
-    return int(pair.size - np.unique(pair).size)
+    pair.sort()
+    return int(np.count_nonzero(pair[1:] == pair[:-1]))
 
 
 def _coder_by_shape(view: View, item: Sketch) -> tuple[Sketch, str]:

@@ -5,8 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-import numpy as np
-
 from relook.errors import RelookError
 from relook.tables.guessed_roles import Line, Roles
 from relook.tables.headers import find_column, fold
@@ -49,9 +47,9 @@ def guess_items(
     RelookError
         A named item table without a column of the items' ids, or a told column that is not there.
     """
-    ids = set()
-    for _, table in labelled:
-        ids |= {str(text) for text in table.coded(table.find(roles.item))[1]}
+    ids: set[str] = set()
+    for _, table in labelled if others else ():
+        ids.update(table.coded(table.find(roles.item))[1].tolist())
     found: list[tuple[Path, Table, str]] = []
     for path, table, named in others:
         column = key if key is not None and named else _key_column(table, ids)
@@ -77,7 +75,7 @@ def _key_column(table: Table, ids: set[str]) -> str | None:
     """The column without repeats that knows most of the labelled items, at least half of them."""
     best, most = None, 0.5
     for one in sketch(table):
-        texts = {str(text) for text in one.texts}
+        texts = set(one.texts.tolist())
         share = len(ids & texts) / len(ids) if ids else 0.0
         if one.n_distinct == len(one.codes) and share >= most and (best is None or share > most):
             best, most = one.header, share
@@ -100,8 +98,8 @@ def _from_table(
         taken |= {fold(name) for name in (roles.item, roles.coder, roles.remark) if name}
     columns = [one for one in sketch(table) if fold(one.header) not in taken]
     if own:
-        item = table.coded(table.find(roles.item))[0]
-        repeats = np.unique(item).size < item.size
+        item, items = table.coded(table.find(roles.item))
+        repeats = len(items) < item.size
         columns = [one for one in columns if not repeats or one.constant_within(item)]
     shown = _told(show, table) if show is not None else _to_show(columns, own)
     groups = _told(group_by, table) if group_by is not None else _to_group(columns)

@@ -159,7 +159,7 @@ def survey_labels(
         coding = code_variable(variable, flat, context)
         if coding is None:
             continue
-        found[variable.name] = _variable_labels(variable, coding)
+        found[variable.name] = variable_labels(variable, coding)
         if flat.text.size == 0 and not findings.any_errors:
             findings.add(
                 f'the variable "{variable.name}" has no labels: every cell is empty or a missing '
@@ -260,7 +260,8 @@ def _leave_out(
     return Joined(joined.items, joined.coders[~gone], flats), left_out
 
 
-def _variable_labels(variable: Variable, coding: Coding) -> VariableLabels:
+def variable_labels(variable: Variable, coding: Coding) -> VariableLabels:
+    """Return the coded labels of a variable with the places they came from."""
     flat = coding.flat
     return VariableLabels(
         variable,

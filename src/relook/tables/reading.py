@@ -9,7 +9,8 @@ from __future__ import annotations
 import glob
 import hashlib
 from collections.abc import Sequence
-from dataclasses import dataclass
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 import numpy as np
@@ -18,6 +19,7 @@ import pandas as pd
 
 from relook.core.exact import IntArray
 from relook.errors import Place, RelookError, nearest
+from relook.tables.arrow_columns import arrow_column, coded_column
 from relook.tables.delimited import Cells, read_delimited
 from relook.tables.encodings import decode
 from relook.tables.findings import counted
@@ -61,6 +63,8 @@ class Table:
         Cells without a text of their own; only those in columns that are used matter.
     delimiter : str or None
         Of delimited text.
+    known : dict of int to (codes, texts)
+        The columns that were coded already: guessing and reading ask for the same ones.
     """
 
     file: str
@@ -72,6 +76,7 @@ class Table:
     said: str
     faults: tuple[CellFault, ...] = ()
     delimiter: str | None = None
+    known: dict[int, tuple[IntArray, Texts]] = field(default_factory=dict)
 
     @property
     def n_rows(self) -> int:
@@ -100,8 +105,16 @@ class Table:
         codes : int array of shape (n_rows,)
         texts : object array of shape (n_texts,)
         """
-        codes, texts = pd.factorize(self.frame[column])
-        return codes, np.asarray(texts, dtype=object)
+        held = self.known.get(column)
+        if held is None:
+            arrow = arrow_column(self.frame[column])
+            if arrow is not None:
+                held = coded_column(arrow)
+            else:
+                codes, texts = pd.factorize(self.frame[column])
+                held = codes.astype(np.int32, copy=False), np.asarray(texts, dtype=object)
+            self.known[column] = held
+        return held
 
     def texts(self, column: int) -> Texts:
         """Return the texts of a column, shape (n_rows,)."""
@@ -152,10 +165,25 @@ def table_from_bytes(
     wanted: Sequence[str] = (),
 ) -> Table:
     """Read a table from the bytes of a file; see `read_table`."""
-    digest = hashlib.sha256(data).hexdigest()
-    ending = Path(file).suffix.casefold()
-    if not data.strip():
+    if not data or data.isspace():
         raise RelookError("the file is empty", where=Place(file), mend="give a table with a header")
+    # A digest of a large file takes as long as reading it, and leaves the interpreter free.
+    with ThreadPoolExecutor(1) as beside:
+        digest = beside.submit(lambda: hashlib.sha256(data).hexdigest())
+        table = _table_of(data, file, sheet, delimiter, encoding, wanted)
+        return replace(table, digest=digest.result())
+
+
+def _table_of(
+    data: bytes,
+    file: str,
+    sheet: str | None,
+    delimiter: str | None,
+    encoding: str | None,
+    wanted: Sequence[str],
+) -> Table:
+    """The table without its digest."""
+    ending = Path(file).suffix.casefold()
     title: str | None = None
     faults: tuple[CellFault, ...] = ()
     if data.startswith(_BOOKS):
@@ -183,7 +211,7 @@ def table_from_bytes(
         cells.header,
         cells.frame,
         cells.rows,
-        digest,
+        "",
         said,
         faults,
         cells.delimiter,

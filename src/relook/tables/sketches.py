@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -130,7 +131,7 @@ GROUP_WORDS = frozenset(
 _DATE = re.compile(r"\s*(\d{4}-\d{1,2}-\d{1,2}|\d{1,2}[./]\d{1,2}[./]\d{2,4}|\d{1,2}:\d{2})")
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(frozen=True, eq=False)
 class Sketch:
     """One column of one table.
 
@@ -151,17 +152,19 @@ class Sketch:
     texts: Texts
     counts: IntArray
 
-    @property
+    @cached_property
     def filled(self) -> BoolArray:
         """Which of `texts` are labels rather than marks of missing ones."""
-        return np.array([text.strip() not in MISSING_MARKS for text in self.texts], dtype=bool)
+        # Chained maps run without a step of the interpreter per text; ids can be millions.
+        marks = map(frozenset(MISSING_MARKS).__contains__, map(str.strip, self.texts))
+        return ~np.fromiter(marks, dtype=bool, count=len(self.texts))
 
-    @property
+    @cached_property
     def n_filled(self) -> int:
         """Cells that hold something."""
         return int(self.counts[self.filled].sum())
 
-    @property
+    @cached_property
     def n_distinct(self) -> int:
         """Distinct texts that hold something."""
         return int(self.filled.sum())
@@ -217,10 +220,12 @@ class Sketch:
         ----------
         groups : int array of shape (n_rows,)
         """
-        order = np.argsort(groups, kind="stable")
-        group, code = groups[order], self.codes[order]
-        same = group[1:] == group[:-1]
-        return bool(same.any() and (code[1:] == code[:-1])[same].all())
+        n_groups = int(groups.max(initial=-1)) + 1
+        some_row = np.full(n_groups, -1, dtype=np.int64)
+        # Whichever row of a group is written last, the others must agree with it.
+        some_row[groups] = self.codes
+        several = np.count_nonzero(some_row >= 0) < groups.size
+        return several and bool((some_row[groups] == self.codes).all())
 
 
 def sketch(table: Table) -> list[Sketch]:

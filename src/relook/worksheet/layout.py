@@ -16,6 +16,7 @@ from relook.worksheet.model import (
     HEADER_DECISION,
     HEADER_ITEM,
     HEADER_KEY,
+    HEADER_LABEL,
     HEADER_NOTE,
     HEADER_REASON,
     HEADER_TICK,
@@ -129,17 +130,19 @@ def columns_of(worksheet: Worksheet) -> tuple[Column, ...]:
         for index, label in enumerate(tick_labels(worksheet.variables))
     ]
     choices = [label for variable in worksheet.variables for label in variable.labels]
-    wanted += [
-        Column(HEADER_DECISION, "decision", _fitting([*choices, "cannot be coded"], 16, 26)),
-        Column(HEADER_REASON, "reason", _fitting(worksheet.reasons, 16, 22)),
-        Column(HEADER_NOTE, "note", 28),
-    ]
+    field = HEADER_LABEL if worksheet.is_coding else HEADER_DECISION
+    wanted.append(Column(field, "decision", _fitting([*choices, "cannot be coded"], 16, 26)))
+    if not worksheet.is_coding:
+        wanted.append(Column(HEADER_REASON, "reason", _fitting(worksheet.reasons, 16, 22)))
+    wanted.append(Column(HEADER_NOTE, "note", 28))
     return _with_unique_headers(wanted)
 
 
 def _with_unique_headers(wanted: Sequence[Column]) -> tuple[Column, ...]:
     """Rename shown columns whose header is one of ours, or there twice."""
     ours = {column.header.casefold() for column in wanted if column.role != "shown"}
+    # On reading either of the two is where decisions stand, so no sheet shows a column by its name.
+    ours |= {HEADER_DECISION, HEADER_LABEL}
     columns, taken = [], set(ours)
     for column in wanted:
         header = column.header

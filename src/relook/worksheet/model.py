@@ -12,16 +12,19 @@ from typing import Literal
 FORMAT = 1
 SHEET_START = "Start here"
 SHEET_QUEUE = "Queue"
+SHEET_ITEMS = "Items"
 SHEET_CODE_BOOK = "Code book"
 SHEET_LISTS = "_lists"
 
 #: Headers of the columns that every queue sheet has. Shown columns stand between item and variable,
 #: competing labels between variable and decision. Headers are matched case-folded on reading.
+#: A coding sheet has "label" where a queue sheet has "decision", and no reason.
 HEADER_KEY = "row code"
 HEADER_ITEM = "item"
 HEADER_VARIABLE = "variable"
 HEADER_COMPETING = "label {number}"
 HEADER_DECISION = "decision"
+HEADER_LABEL = "label"
 HEADER_REASON = "reason"
 HEADER_NOTE = "note"
 #: A column per label of a set variable, between the evidence and the decision. Any mark in it means
@@ -40,6 +43,9 @@ PROPERTY_FORMAT = "relook format"
 
 #: How much a worksheet shows of who said what.
 Reveal = Literal["nothing", "labels", "tallies", "names"]
+#: What a worksheet is for: labels that are given again after somebody looked twice, or fresh
+#: labels that are to be independent of all that were given before.
+Purpose = Literal["second look", "coding"]
 #: How a decision is entered: one label from a list, a number, or any of several labels.
 Entry = Literal["choice", "number", "set"]
 
@@ -141,6 +147,7 @@ class Worksheet:
         Whether a row may show labels that nobody gave (said on the first sheet).
     stamp : str
         ISO time recorded for the round.
+    purpose : {"second look", "coding"}
     """
 
     id: str
@@ -155,3 +162,19 @@ class Worksheet:
     rows: tuple[SheetRow, ...]
     may_show_other_labels: bool
     stamp: str
+    purpose: Purpose = "second look"
+
+    @property
+    def is_coding(self) -> bool:
+        """Whether fresh labels are asked for, and so none are shown."""
+        return self.purpose == "coding"
+
+    @property
+    def occasion(self) -> str:
+        """What the worksheet was sent for, such as "round 1" or "coding 2"."""
+        return f"{'coding' if self.is_coding else 'round'} {self.round}"
+
+    @property
+    def fields_sheet(self) -> str:
+        """Title of the sheet that is filled in."""
+        return SHEET_ITEMS if self.is_coding else SHEET_QUEUE

@@ -39,13 +39,12 @@ def add_rules(
         The last row of the queue.
     """
     decision = _letters(columns, "decision")[0]
-    reason = _letters(columns, "reason")[0]
     variable = "$" + _letters(columns, "variable")[0] + "2"
     ticks = _letters(columns, "tick")
     rule = _decision_rule(worksheet, lists, f"${decision}2", variable)
     rule.add(f"{decision}2:{decision}{last}")
     sheet.add_data_validation(rule)
-    if lists.reasons:
+    for reason in _letters(columns, "reason") if lists.reasons else ():
         why = DataValidation(
             type="list",
             formula1=lists.reasons,
@@ -86,9 +85,9 @@ def _decision_rule(
             errorStyle="stop",
             errorTitle="Not a number that fits",
             error=f"Type a number{_bounds_said(worksheet)}, or: {CANNOT_BE_CODED}. "
-            f"To take an earlier decision back, type: {WITHDRAW}.",
+            f"To take back what was sent before, type: {WITHDRAW}.",
             showInputMessage=True,
-            promptTitle="Your decision",
+            promptTitle="Your label" if worksheet.is_coding else "Your decision",
             prompt=f"A number{_bounds_said(worksheet)}, or: {CANNOT_BE_CODED}.",
         )
     only_choices = kinds == {"choice"}
@@ -100,7 +99,7 @@ def _decision_rule(
         errorStyle="stop",
         errorTitle="Not one of the labels",
         error="Choose a label from the list (Alt+Down opens it). If none can be given, choose "
-        f"“{CANNOT_BE_CODED}”. “{WITHDRAW}” takes an earlier decision back.",
+        f"“{CANNOT_BE_CODED}”. “{WITHDRAW}” takes back what was sent before.",
     )
 
 

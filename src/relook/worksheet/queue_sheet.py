@@ -11,7 +11,7 @@ from relook.worksheet import layout, palette
 from relook.worksheet.layout import Column, cell_text
 from relook.worksheet.lists_sheet import Lists
 from relook.worksheet.looks import Look, Looks
-from relook.worksheet.model import SHEET_QUEUE, SheetRow, Worksheet
+from relook.worksheet.model import SheetRow, Worksheet
 from relook.worksheet.page import set_height, set_up_page
 from relook.worksheet.queue_looks import RowStyles
 from relook.worksheet.queue_rules import add_rules
@@ -32,14 +32,14 @@ def write_queue(book: Workbook, looks: Looks, worksheet: Worksheet, lists: Lists
     lists : Lists
         Where the dropdowns' lists are.
     """
-    sheet = book.create_sheet(SHEET_QUEUE)
+    sheet = book.create_sheet(worksheet.fields_sheet)
     columns = layout.columns_of(worksheet)
     _write_header(sheet, looks, columns)
     _write_rows(sheet, looks, worksheet, columns)
     last = max(2, len(worksheet.rows) + 1)
     add_rules(sheet, worksheet, columns, lists, last)
     _set_up_view(sheet, columns, last)
-    set_up_page(sheet, f"{worksheet.title} · round {worksheet.round} · {worksheet.adjudicator}")
+    set_up_page(sheet, f"{worksheet.title} · {worksheet.occasion} · {worksheet.adjudicator}")
 
 
 def _write_header(sheet: OpenpyxlSheet, looks: Looks, columns: tuple[Column, ...]) -> None:

@@ -20,6 +20,7 @@ from relook.worksheet.model import (
     HEADER_DECISION,
     HEADER_ITEM,
     HEADER_KEY,
+    HEADER_LABEL,
     HEADER_NOTE,
     HEADER_REASON,
     HEADER_TICK,
@@ -32,7 +33,9 @@ from relook.worksheet.model import (
 _KEY = re.compile(rf"[{ALPHABET}]{{4}}-[{ALPHABET}]{{4}}-[{ALPHABET}]{{4}}")
 _LEAST_HEADERS = 2  # of ours, in one row, to tell the header row
 _TICK = folded(HEADER_TICK.format(label="\x00")).partition("\x00")[0]
-_OURS = (HEADER_KEY, HEADER_ITEM, HEADER_VARIABLE, HEADER_DECISION, HEADER_REASON, HEADER_NOTE)
+#: Where decisions stand in a queue sheet, and labels in a coding sheet.
+_FIELDS = (HEADER_DECISION, HEADER_LABEL)
+_OURS = (HEADER_KEY, HEADER_ITEM, HEADER_VARIABLE, *_FIELDS, HEADER_REASON, HEADER_NOTE)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -165,7 +168,7 @@ def _check_format(text: str, file: str) -> None:
 def _find_queue(sheet: Sheet) -> _Queue | None:
     """Return the queue of a sheet, None where it has none.
 
-    The header row is the one with the row code and the decision in it; where no row has both, the
+    The header row is the one with the row code and the field to fill in; where no row has both, the
     first with two headers of ours and row codes in one of its columns.
     """
     ours = {folded(header) for header in _OURS}
@@ -182,14 +185,18 @@ def _find_queue(sheet: Sheet) -> _Queue | None:
             if text:
                 headers[text] = (*headers.get(text, ()), index)
         queue = _Queue(sheet, number, headers)
-        if HEADER_KEY in found and HEADER_DECISION in found:
+        if HEADER_KEY in found and _field_of(headers) is not None:
             return queue
         second = second or queue
     if second is None:
         return None
-    if HEADER_DECISION not in second.headers or _column_of_keys(sheet) is not None:
+    if _field_of(second.headers) is None or _column_of_keys(sheet) is not None:
         return second
     return None
+
+
+def _field_of(headers: Mapping[str, object]) -> str | None:
+    return next((field for field in _FIELDS if field in headers), None)
 
 
 def _column_of_keys(sheet: Sheet) -> int | None:
@@ -221,15 +228,18 @@ def _columns(queue: _Queue, file: str) -> tuple[_Columns, list[Problem]]:
     else:
         key = _column_of_keys(queue.sheet)
         if key is None:
-            raise _missing_column(HEADER_KEY, headers, where)
+            raise _missing_column((HEADER_KEY,), headers, where)
         letter = column_letters(key + 1)
         said = f'no column is called "{HEADER_KEY}"; the row codes were found in column {letter}'
         notes.append(Problem(said, where, severity="note"))
-    if HEADER_DECISION not in headers:
-        raise _missing_column(HEADER_DECISION, headers, where)
-    decision = _only_filled(queue, headers[HEADER_DECISION], where)
+    field = _field_of(headers)
+    if field is None:
+        # A coding sheet has no reasons; without that column either may have been meant.
+        meant = (HEADER_DECISION,) if HEADER_REASON in headers else _FIELDS
+        raise _missing_column(meant, headers, where)
+    decision = _only_filled(queue, field, where)
     reason, note = headers.get(HEADER_REASON), headers.get(HEADER_NOTE)
-    taken = {HEADER_KEY, HEADER_DECISION, HEADER_REASON, HEADER_NOTE}
+    taken = {HEADER_KEY, field, HEADER_REASON, HEADER_NOTE}
     ticks = {
         indices[0]: header.removeprefix(_TICK)
         for header, indices in headers.items()
@@ -257,8 +267,9 @@ def _best_key_column(queue: _Queue, indices: Sequence[int]) -> int:
     )
 
 
-def _only_filled(queue: _Queue, indices: Sequence[int], where: Place) -> int:
+def _only_filled(queue: _Queue, field: str, where: Place) -> int:
     """Return the decision column; of copies of it, the only one with anything in it."""
+    indices = queue.headers[field]
     filled = [
         index
         for index in indices
@@ -271,9 +282,9 @@ def _only_filled(queue: _Queue, indices: Sequence[int], where: Place) -> int:
     if len(filled) > 1:
         letters = [column_letters(index + 1) for index in filled]
         raise RelookError(
-            f'{len(filled)} columns are called "{HEADER_DECISION}": {", ".join(letters)}',
+            f'{len(filled)} columns are called "{field}": {", ".join(letters)}',
             where=where,
-            mend="rename the columns that do not hold the decisions",
+            mend=f"rename the columns that do not hold the {field}s",
         )
     return filled[0] if filled else indices[0]
 
@@ -324,7 +335,7 @@ def _rows(queue: _Queue, columns: _Columns) -> list[ReturnedRow]:
 def _repeats_header(cells: Sequence[Cell], columns: _Columns) -> bool:
     return (
         folded(_at(cells, columns.key).text) == HEADER_KEY
-        and folded(_at(cells, columns.decision).text) == HEADER_DECISION
+        and folded(_at(cells, columns.decision).text) in _FIELDS
     )
 
 
@@ -341,21 +352,25 @@ def _said(cells: Sequence[Cell], index: int | None) -> str:
     return "" if index is None else _at(cells, index).text.strip()
 
 
-def _missing_column(header: str, headers: Mapping[str, object], where: Place) -> RelookError:
-    close = nearest(header, headers)
+def _missing_column(
+    wanted: Sequence[str], headers: Mapping[str, object], where: Place
+) -> RelookError:
+    name = " or ".join(f'"{header}"' for header in wanted)
+    close = next((found for header in wanted if (found := nearest(header, headers))), None)
     mend = (
-        f'rename the column "{close}" to "{header}"'
+        f'rename the column "{close}" to {name}'
         if close is not None
-        else f'write "{header}" above its column (found: {listed(headers)})'
+        else f"write {name} above its column (found: {listed(headers)})"
     )
-    return RelookError(f'no column is called "{header}"', where=where, mend=mend)
+    return RelookError(f"no column is called {name}", where=where, mend=mend)
 
 
 def _no_queue(book: Book) -> RelookError:
     titles = [sheet.title for sheet in book.sheets if sheet.title]
     sheets = f"; its sheets are {listed(titles)}" if titles else ""
     return RelookError(
-        f'no sheet has the columns "{HEADER_KEY}" and "{HEADER_DECISION}"{sheets}',
+        f'no sheet has the columns "{HEADER_KEY}" and "{HEADER_DECISION}" or "{HEADER_LABEL}"'
+        f"{sheets}",
         where=Place(book.file),
         mend="if this is a returned worksheet, restore its header row; else take the file away",
     )

@@ -9,6 +9,7 @@ from relook.cli.commands.check import check
 from relook.cli.commands.collect import collect
 from relook.cli.commands.new import new
 from relook.cli.commands.queue import queue
+from relook.cli.commands.recode import recode
 from relook.cli.commands.release import release
 from relook.cli.commands.rescore import rescore
 from relook.cli.commands.score import score
@@ -30,6 +31,7 @@ COMMANDS: dict[str, list[tuple[str, Callable[..., Any], str]]] = {
     ],
     "Conclude": [
         ("rescore", rescore, "relook rescore my_project"),
+        ("recode", recode, "relook recode my_project --items 80 --overlap 2"),
         ("release", release, "relook release my_project"),
     ],
 }

@@ -25,7 +25,7 @@ def collect(
         list[Path] | None,
         typer.Argument(
             metavar="[WORKSHEET…]",
-            help="Returned files; without any: all in the rounds' folders named returned.",
+            help="Returned files; without any: all in the folders named returned.",
             show_default=False,
         ),
     ] = None,
@@ -60,13 +60,13 @@ def collect(
     quiet: QuietOption = False,
     debug: DebugOption = False,
 ) -> None:
-    """Take worksheets back: valid decisions are kept, every other row is listed with its mend."""
+    """Take worksheets and coding sheets back; what cannot be taken is listed with its mend."""
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.collect import collect_screen, rebuild_screen
-        from relook.project.returning import collecting
-        from relook.project.returning.collect_table import collect_object
+        from relook.project.returning.collect_table import collected_object
         from relook.project.returning.rebuilding import rebuild as rebuild_record
         from relook.project.returning.rulings_run import run_rulings
+        from relook.project.returning.sorting import CollectedAll, collect_all
         from relook.project.sending.mending import mend_worksheet
         from relook.project.setup.folder import Project, write_whole
 
@@ -77,10 +77,12 @@ def collect(
             )
         opened = Project.open(project)
         if rebuild:
-            terminal.data(rebuild_screen(rebuild_record(opened, dry_run=dry_run)))
+            for area in (opened, opened.codings):
+                if any(area.rounds_folder.glob("*/round.json")):
+                    terminal.data(rebuild_screen(rebuild_record(area, dry_run=dry_run)))
             return
         if rulings is not None:
-            result = run_rulings(
+            ruled = run_rulings(
                 opened,
                 rulings,
                 strict=strict,
@@ -88,8 +90,9 @@ def collect(
                 dry_run=dry_run,
                 now=terminal.now(),
             )
+            result = CollectedAll(ruled, None)
         else:
-            result = collecting.collect(
+            result = collect_all(
                 opened,
                 worksheets or None,
                 strict=strict,
@@ -97,13 +100,16 @@ def collect(
                 dry_run=dry_run,
                 now=terminal.now(),
             )
-        if mend_sheet is not None and result.mend_keys:
-            data = mend_worksheet(opened, result.mend_keys, terminal.now())
+        of_rounds = result.rounds
+        if mend_sheet is not None and of_rounds is not None and of_rounds.mend_keys:
+            data = mend_worksheet(opened, of_rounds.mend_keys, terminal.now())
             if not dry_run:
                 write_whole(mend_sheet, data, force=force)
             terminal.say(f"{'would write' if dry_run else 'wrote'} {mend_sheet}")
+        if mend_sheet is not None and result.codings is not None and result.codings.mend_keys:
+            terminal.say("coding sheets have no mend sheet: send each coder's own back to them")
         if as_json:
-            terminal.json(collect_object(result))
+            terminal.json(collected_object(result))
         else:
             terminal.data(collect_screen(result, opened))
         if not result.is_complete:

@@ -45,6 +45,15 @@ def rescore(
             "called independent.",
         ),
     ] = False,
+    coding: Annotated[
+        int | None,
+        typer.Option(
+            "--coding",
+            min=2,
+            metavar="N",
+            help="Set this fresh coding beside the first; left out: the last one that is back.",
+        ),
+    ] = None,
     xlsx: Annotated[
         Path | None,
         typer.Option("--xlsx", metavar="FILE", help="Write the same as a workbook with charts."),
@@ -58,9 +67,17 @@ def rescore(
 ) -> None:
     """Show alpha before and agreement in the corrected data after, and what the decisions say."""
     with running(quiet=quiet, debug=debug) as terminal:
+        from relook.cli.screens.layout import stacked
+        from relook.cli.screens.recode import compared_screen
         from relook.cli.screens.rescore import rescore_screen
+        from relook.project.archive.record import read_record
         from relook.project.figures.ordering import DEFAULT_SEED
         from relook.project.outcome import rescoring
+        from relook.project.outcome.codings_compared import (
+            codings_object,
+            compare_codings,
+            latest_coding_back,
+        )
         from relook.project.outcome.rescore_report import report_of
         from relook.project.outcome.rescore_tables import rescore_object
         from relook.project.setup.folder import Project, write_whole
@@ -75,18 +92,26 @@ def rescore(
         if against:
             _against(terminal, loaded, against, variable, relabelled, dry_run, as_json, xlsx)
             return
-        held = rescoring.rescore(
-            loaded, seed=DEFAULT_SEED if seed is None else seed, relabelled=relabelled
-        )
+        seed = DEFAULT_SEED if seed is None else seed
+        number = latest_coding_back(loaded) if coding is None else coding
+        compared = None if number is None else compare_codings(loaded, number, seed=seed)
+        if compared is not None and not read_record(opened).decisions and xlsx is None:
+            if as_json:
+                terminal.json({"project": str(opened.root), "codings": codings_object(compared)})
+            else:
+                terminal.data(stacked(*compared_screen(compared)))
+            return
+        held = rescoring.rescore(loaded, seed=seed, relabelled=relabelled)
         if xlsx is not None:
             data = write_report(report_of(held, terminal.now().isoformat(timespec="seconds")))
             if not dry_run:
                 write_whole(xlsx, data, force=force)
             terminal.say(f"{'would write' if dry_run else 'wrote'} {xlsx}")
         if as_json:
-            terminal.json(rescore_object(held))
+            codings = None if compared is None else codings_object(compared)
+            terminal.json({**rescore_object(held), "codings": codings})
         else:
-            terminal.data(rescore_screen(held))
+            terminal.data(rescore_screen(held, compared))
 
 
 def _against(

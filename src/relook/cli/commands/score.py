@@ -23,7 +23,7 @@ from relook.cli.options import (
     VariableOption,
 )
 from relook.cli.running import running
-from relook.errors import ExitCode
+from relook.errors import ExitCode, RelookError
 
 
 def score(
@@ -36,6 +36,12 @@ def score(
             "--merge",
             metavar="NEW=A,B",
             help="Show alpha with labels A and B taken as one; may be repeated.",
+        ),
+    ] = None,
+    coding: Annotated[
+        int | None,
+        typer.Option(
+            "--coding", min=1, metavar="N", help="Of this coding; 1 is that of the label tables."
         ),
     ] = None,
     rank_by: RankByOption = None,
@@ -66,6 +72,7 @@ def score(
     with running(quiet=quiet, debug=debug) as terminal:
         from relook.cli.screens.score import score_screen
         from relook.cli.targets import open_target
+        from relook.project.archive.codings import FIRST_CODING, coding_numbered, load_coding
         from relook.project.figures import scoring
         from relook.project.figures.item_table import item_table
         from relook.project.figures.label_mergers import parse_merge_group
@@ -91,7 +98,12 @@ def score(
             "seconds_per_item": seconds_per_item,
         }
         queue = settings_of_queue(project.settings.queue, overrides)
-        loaded = load(project, only=variable)
+        if coding is None or coding == FIRST_CODING:
+            loaded = load(project, only=variable)
+        else:
+            if not project.settings.project:
+                raise RelookError("a bare table has one coding alone", mend="name a project folder")
+            loaded = load_coding(project, coding_numbered(project, coding), only=variable)
         for line in loaded.said:
             terminal.say(line)
         terminal.problems(loaded.problems)

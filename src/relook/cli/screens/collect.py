@@ -10,16 +10,30 @@ from rich.text import Text
 from relook.cli.screens.layout import counted, heading, note, shortened, small_table, stacked
 from relook.project.returning.collected import Collected, RowReport
 from relook.project.returning.rebuilding import Rebuilt
+from relook.project.returning.sorting import CollectedAll
 from relook.project.setup.folder import Project
 from relook.project.setup.people import names_by_id
 
 _SHOWN = 20
 
 
-def collect_screen(result: Collected, project: Project) -> RenderableType:
-    """Lay out what a collect did."""
-    parts: list[RenderableType] = [heading(f"collected {counted(len(result.files), 'worksheet')}")]
-    parts.append(note(_sum(result)))
+def collect_screen(result: CollectedAll, project: Project) -> RenderableType:
+    """Lay out what a collect did, worksheets of rounds before coding sheets."""
+    parts: list[RenderableType] = []
+    if result.rounds is not None:
+        parts += _collected(result.rounds, project, "worksheet", "decision")
+    if result.codings is not None:
+        parts += [Text("")] if parts else []
+        parts += _collected(result.codings, project, "coding sheet", "label")
+    done = [part for part in (result.rounds, result.codings) if part is not None]
+    if any(not part.dry_run and (part.accepted or part.unchanged) for part in done):
+        parts += [Text(""), note(f"next: relook rescore {project.shown_root}")]
+    return stacked(*parts)
+
+
+def _collected(result: Collected, project: Project, sheet: str, entry: str) -> list[RenderableType]:
+    parts: list[RenderableType] = [heading(f"collected {counted(len(result.files), sheet)}")]
+    parts.append(note(_sum(result, entry)))
     for said, problems in (
         ("not readable, nothing taken from it", result.unreadable),
         ("to be known", result.notes),
@@ -52,9 +66,7 @@ def collect_screen(result: Collected, project: Project) -> RenderableType:
             *_more(len(result.splits)),
             note(f"`relook queue {project.shown_root} --splits` sends them to somebody else."),
         ]
-    if not result.dry_run and (result.accepted or result.unchanged):
-        parts += [Text(""), note(f"next: relook rescore {project.shown_root}")]
-    return stacked(*parts)
+    return parts
 
 
 def rebuild_screen(rebuilt: Rebuilt) -> RenderableType:
@@ -69,8 +81,8 @@ def rebuild_screen(rebuilt: Rebuilt) -> RenderableType:
     return stacked(*parts)
 
 
-def _sum(result: Collected) -> str:
-    taken = counted(result.accepted, "decision")
+def _sum(result: Collected, entry: str) -> str:
+    taken = counted(result.accepted, entry)
     if result.held_back:
         return "Nothing was taken: --strict takes all rows or none, and some cannot be taken."
     said = f"{taken} would be taken" if result.dry_run else f"{taken} taken"

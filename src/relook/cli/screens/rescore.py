@@ -18,16 +18,18 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
+from relook.cli.screens.recode import compared_screen
 from relook.project.outcome import rescore_sentences as sentences
+from relook.project.outcome.codings_compared import CodingsCompared
 from relook.project.outcome.moves import CoderStanding, Move
 from relook.project.outcome.rescoring import Rescore, VariableRescore
 
 _SHOWN = 12
 
 
-def rescore_screen(held: Rescore) -> RenderableType:
-    """Lay out one page per variable, then what holds for all of them."""
-    parts: list[RenderableType] = []
+def rescore_screen(held: Rescore, compared: CodingsCompared | None = None) -> RenderableType:
+    """Lay out a fresh coding where there is one, a page per variable, and what holds for all."""
+    parts: list[RenderableType] = [] if compared is None else compared_screen(compared)
     for scored in held.variables:
         parts += [*_variable(held, scored), Text("")]
     stale = sentences.stale_sentence(held)

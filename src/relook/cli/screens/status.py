@@ -17,6 +17,7 @@ from relook.cli.screens.layout import (
     small_table,
     stacked,
 )
+from relook.project.archive.codings import CODERS
 from relook.project.returning.standing import Standing
 from relook.project.setup.folder import Project
 from relook.project.setup.people import names_by_id
@@ -47,6 +48,27 @@ def status_screen(standing: Standing, project: Project) -> RenderableType:
                         count(sheet.n_rows - sheet.n_decided),
                     )
                     for sheet in standing.sheets
+                    if sheet.round == held.number
+                ],
+                numbers=(2, 3, 4),
+            ),
+        ]
+    for held in standing.codings:
+        coders: dict[str, str] = held.settings[CODERS]
+        parts += [
+            Text(""),
+            heading(f"coding {held.number}, {held.made[:10]}"),
+            small_table(
+                ("coding sheet", "for", "rows", "answered", "open"),
+                [
+                    (
+                        sheet.file,
+                        coders.get(sheet.adjudicator, sheet.adjudicator),
+                        count(sheet.n_rows),
+                        count(sheet.n_decided),
+                        count(sheet.n_rows - sheet.n_decided),
+                    )
+                    for sheet in standing.coding_sheets
                     if sheet.round == held.number
                 ],
                 numbers=(2, 3, 4),
@@ -114,6 +136,24 @@ def status_object(standing: Standing, project: Project) -> dict[str, Any]:
                 ],
             }
             for held in standing.rounds
+        ],
+        "codings": [
+            {
+                "coding": held.number,
+                "made": held.made,
+                "worksheets": [
+                    {
+                        "file": str(project.root / sheet.file),
+                        "coder": held.settings[CODERS].get(sheet.adjudicator, sheet.adjudicator),
+                        "n_rows": sheet.n_rows,
+                        "n_answered": sheet.n_decided,
+                        "back": sheet.is_back,
+                    }
+                    for sheet in standing.coding_sheets
+                    if sheet.round == held.number
+                ],
+            }
+            for held in standing.codings
         ],
         "states": standing.states,
         "splits": [

@@ -287,7 +287,7 @@ def _score_variable(
         label_parts=label_table(agreement),
         groups=_groups(loaded, agreement),
         prospect=prospect(agreement, selected, consensus),
-        needed_items=_needed(held, agreement),
+        needed_items=needed_for(held, agreement) if agreement.n_coders == 2 else None,
         doubt=ordering.doubts[name],
         mergers=tuple(mergers_that_lift(agreement)),
     )
@@ -323,9 +323,9 @@ def _groups(loaded: Loaded, agreement: Agreement) -> tuple[GroupScore, ...]:
     return tuple(found)
 
 
-def _needed(held: VariableLabels, agreement: Agreement) -> NeededItems | None:
-    """What two coders need by the published rule, which speaks of nominal labels."""
-    if agreement.function.name != "nominal" or agreement.n_coders != 2 or agreement.alpha is None:
+def needed_for(held: VariableLabels, agreement: Agreement) -> NeededItems | None:
+    """Return what two coders need by the published rule; None where labels are not nominal."""
+    if agreement.function.name != "nominal" or agreement.alpha is None:
         return None
     counts = agreement.marginals
     rarest = int(np.argmin(np.where(counts > 0, counts, counts.max() + 1)))

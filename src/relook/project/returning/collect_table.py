@@ -7,12 +7,26 @@ from typing import Any
 
 from relook.errors import Problem
 from relook.project.returning.collected import Collected, RowReport
+from relook.project.returning.sorting import CollectedAll
 
 Row = dict[str, Any]
 
 
-def collect_object(result: Collected) -> Row:
+def collected_object(result: CollectedAll) -> Row:
     """Return the object, but for its format number.
+
+    Notes
+    -----
+    What `part_object` says of the worksheets of rounds, at its top; `codings`: the same of coding
+    sheets, null where there was none.
+    """
+    rounds = Collected() if result.rounds is None else result.rounds
+    codings = None if result.codings is None else part_object(result.codings)
+    return {**part_object(rounds), "codings": codings}
+
+
+def part_object(result: Collected) -> Row:
+    """Return what was collected of one kind of sheets.
 
     Notes
     -----

@@ -74,7 +74,7 @@ def collect(
         raise RelookError(
             "no worksheet was sent yet, so none can be collected",
             where=Place(str(project.root)),
-            mend="run `relook queue` first",
+            mend="run `relook queue` first, or `relook recode` for a fresh coding",
         )
     with _held(project, dry_run=dry_run):
         record = read_record(project)
@@ -96,7 +96,9 @@ def collect(
             name = _write(project, record, weighed, read, sent, files, reinstate=reinstate, now=now)
             record = read_record(project) if name else record
             result = replace(result, record_file=name)
-        return replace(result, splits=splits_of(project, record))
+        # Coders are meant to differ; only between adjudicators is that a question to be settled.
+        splits = splits_of(project, record) if project.area == "rounds" else ()
+        return replace(result, splits=splits)
 
 
 def sent_rows(project: Project) -> Sent:

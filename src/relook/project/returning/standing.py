@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections import Counter
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
-from relook.core.decisions import Settlement
+from relook.core.decisions import Decision, Settlement
 from relook.errors import Problem
+from relook.project.archive.codings import labels_given, read_codings
 from relook.project.archive.history import History
 from relook.project.archive.record import inspect_record
 from relook.project.archive.rounds import Round, read_rounds
@@ -48,6 +50,10 @@ class Standing:
     ----------
     rounds : tuple of Round
     sheets : tuple of SheetStanding
+    codings : tuple of Round
+        The codings after the first.
+    coding_sheets : tuple of SheetStanding
+        Of these, with the coding's number for the round's.
     states : dict of str to int
         How many (item, variable) are settled, cannot be coded, split, unconfirmed, open.
     splits : tuple of Settlement
@@ -63,6 +69,8 @@ class Standing:
 
     rounds: tuple[Round, ...]
     sheets: tuple[SheetStanding, ...]
+    codings: tuple[Round, ...]
+    coding_sheets: tuple[SheetStanding, ...]
     states: dict[str, int]
     splits: tuple[Settlement, ...]
     stale: tuple[tuple[str, str], ...]
@@ -88,27 +96,30 @@ def standing_of(project: Project) -> Standing:
     record, problems = inspect_record(project)
     settled = settlements(loaded, record)
     history = History(rounds, record, settled)
-    sheets = tuple(_sheets(rounds, settled))
+    sheets = tuple(_sheets(rounds, [each for kept in settled.values() for each in kept.standing]))
+    codings = read_codings(project)
+    fresh, more_problems = inspect_record(project.codings)
+    coding_sheets = tuple(
+        sheet for held in codings for sheet in _sheets([held], labels_given(fresh, held))
+    )
     waiting = tuple(held for held in settled.values() if held.state in ("split", "unconfirmed"))
     stale, orphaned = _changed(loaded, rounds)
     return Standing(
         rounds=tuple(rounds),
         sheets=sheets,
+        codings=tuple(codings),
+        coding_sheets=coding_sheets,
         states=dict(sorted(Counter(held.state for held in settled.values()).items())),
         splits=waiting,
         stale=stale,
         orphaned=orphaned,
-        problems=(*loaded.problems, *problems),
-        next_step=_next_step(project, history, sheets, waiting),
+        problems=(*loaded.problems, *problems, *more_problems),
+        next_step=_next_step(project, history, sheets, coding_sheets, waiting),
     )
 
 
-def _sheets(rounds: list[Round], settled: dict[tuple[str, str], Settlement]) -> list[SheetStanding]:
-    ruled = {
-        (decision.item, decision.variable, decision.adjudicator)
-        for held in settled.values()
-        for decision in held.standing
-    }
+def _sheets(rounds: Sequence[Round], standing: Iterable[Decision]) -> list[SheetStanding]:
+    ruled = {(each.item, each.variable, each.adjudicator) for each in standing}
     found = []
     for held in rounds:
         decided = Counter(
@@ -146,9 +157,14 @@ def _next_step(
     project: Project,
     history: History,
     sheets: tuple[SheetStanding, ...],
+    coding_sheets: tuple[SheetStanding, ...],
     waiting: tuple[Settlement, ...],
 ) -> str:
     shown = project.shown_root
+    if coding_sheets and not any(sheet.is_back for sheet in coding_sheets):
+        return f"wait for the coding sheets, then relook collect {shown}"
+    if not sheets and coding_sheets:
+        return f"relook rescore {shown}"
     if not sheets:
         return f"relook queue {shown}"
     out = [sheet for sheet in sheets if sheet.n_decided < sheet.n_rows]

@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 import re
 import unicodedata
+from collections.abc import Iterable
 from dataclasses import asdict, dataclass
 
 from relook import __version__
@@ -26,7 +27,7 @@ from relook.worksheet.competing import RowLabels, competing_labels, shown_order
 from relook.worksheet.keys import evidence_digests
 from relook.worksheet.layout import evidence_cells
 from relook.worksheet.model import Reveal, SheetVariable, Worksheet
-from relook.worksheet.plan import PlannedRow, PlannedWorksheet
+from relook.worksheet.plan import Adjudicator, PlannedRow, PlannedWorksheet
 from relook.worksheet.write import write_worksheet
 
 OVERVIEW_FILE = "overview.xlsx"
@@ -84,7 +85,8 @@ def issue_round(
         worksheet = _worksheet(loaded, planned, held, variables, competing, secret, stamp)
         data = write_worksheet(worksheet)
         path = project.relative(
-            project.worksheets_folder(planned.number) / file_name(held, planned.number, files)
+            project.worksheets_folder(planned.number)
+            / file_name(f"round-{planned.number:02d}", held.adjudicator, held.suffix, files)
         )
         files[path] = data
         sheets.append(
@@ -119,9 +121,18 @@ def issue_round(
 
 
 def write_round(
-    project: Project, issued: IssuedRound, overview: bytes, *, force: bool = False
+    project: Project, issued: IssuedRound, overview: bytes | None = None, *, force: bool = False
 ) -> None:
-    """Write a round's files; round.json comes last, for without it there is no round.
+    """Write the files of a round or coding; round.json comes last: without it there is none.
+
+    Parameters
+    ----------
+    project : Project
+        Its area says which of the two it is.
+    issued : IssuedRound
+    overview : bytes, optional
+        The lead's workbook.
+    force : bool
 
     Raises
     ------
@@ -131,27 +142,41 @@ def write_round(
     number = issued.round.number
     folder = project.round_folder(number)
     if (folder / ROUND_FILE).exists() and not force:
+        what, command = ("coding", "recode") if project.area == "codings" else ("round", "queue")
         raise RelookError(
-            f"round {number} exists already",
+            f"{what} {number} exists already",
             where=Place(project.relative(folder)),
-            mend="run `relook queue` again for the next round, or add --force to replace it",
+            mend=f"run `relook {command}` again for the next {what}, or add --force to replace it",
         )
     for path, data in issued.worksheets.items():
         write_whole(project.root / path, data)
-    write_whole(folder / OVERVIEW_FILE, overview)
+    if overview is not None:
+        write_whole(folder / OVERVIEW_FILE, overview)
     project.returned_folder(number).mkdir(exist_ok=True)
     project.decisions_folder.mkdir(exist_ok=True)
     write_whole(folder / ROUND_FILE, issued.round.to_json())
 
 
-def file_name(held: PlannedWorksheet, number: int, taken: dict[str, bytes]) -> str:
-    """Return a worksheet's file name: round, adjudicator, part; safe on every file system."""
-    plain = unicodedata.normalize("NFC", held.adjudicator.name)
-    plain = re.sub(r"[^\w-]+", "-", plain).strip("-_")[:40] or held.adjudicator.id
-    name = f"round-{number:02d}-{plain}{held.suffix}.xlsx"
+def file_name(occasion: str, person: Adjudicator, suffix: str, taken: Iterable[str]) -> str:
+    """Return a worksheet's file name, safe on every file system.
+
+    Parameters
+    ----------
+    occasion : str
+        Such as "round-01".
+    person : Adjudicator
+        Whose it is.
+    suffix : str
+        Says which part it is where there are several.
+    taken : iterable of str
+        Paths that are given away already.
+    """
+    plain = unicodedata.normalize("NFC", person.name)
+    plain = re.sub(r"[^\w-]+", "-", plain).strip("-_")[:40] or person.id
+    name = f"{occasion}-{plain}{suffix}.xlsx"
     if any(path.casefold().endswith("/" + name.casefold()) for path in taken):
         # Two names that differ only in what file systems do not tell apart.
-        name = f"round-{number:02d}-{plain}-{held.adjudicator.id}{held.suffix}.xlsx"
+        name = f"{occasion}-{plain}-{person.id}{suffix}.xlsx"
     return name
 
 

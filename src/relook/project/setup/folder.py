@@ -7,8 +7,9 @@ import os
 import secrets
 import tempfile
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
+from typing import Literal
 
 import filelock
 
@@ -16,6 +17,8 @@ from relook.errors import Place, RelookError
 from relook.project.setup.settings import SETTINGS_FILE, Settings, load_settings
 
 _LOCK_SECONDS = 20
+#: What goes out and comes back: rounds of second looks, or codings, each with fresh labels.
+Area = Literal["rounds", "codings"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,10 +30,14 @@ class Project:
     root : Path
         The folder that holds relook.toml, absolute.
     settings : Settings
+    area : {"rounds", "codings"}
+        Which part of the folder the properties below speak of. Coding sheets go out, come back and
+        are recorded as worksheets are, one coding in the place of one round.
     """
 
     root: Path
     settings: Settings
+    area: Area = "rounds"
 
     @classmethod
     def open(cls, root: Path) -> Project:
@@ -61,13 +68,20 @@ class Project:
         return str(self.root)
 
     @property
+    def codings(self) -> Project:
+        """The same folder, as far as it holds codings."""
+        return replace(self, area="codings")
+
+    @property
     def rounds_folder(self) -> Path:
-        """Where the rounds are."""
-        return self.root / "rounds"
+        """Where the rounds, or codings, are."""
+        return self.root / self.area
 
     @property
     def decisions_folder(self) -> Path:
-        """Where the record of decisions is."""
+        """Where the record of decisions, or of fresh labels, is."""
+        if self.area == "codings":
+            return self.rounds_folder / "record"
         return self.root / "decisions"
 
     def round_folder(self, number: int) -> Path:
@@ -123,7 +137,9 @@ class Project:
         file = self._secret_file
         where = Place(self.relative(file))
         if not file.exists():
-            if any(self.rounds_folder.glob("*/round.json")):
+            if any(self.root.glob("rounds/*/round.json")) or any(
+                self.root.glob("codings/*/round.json")
+            ):
                 raise RelookError(
                     "the project's secret is missing, and rounds were already written with it",
                     where=where,
