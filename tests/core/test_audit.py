@@ -151,3 +151,30 @@ def test_a_negative_number_of_draws_is_refused() -> None:
     """It is no number of items."""
     with pytest.raises(RelookError, match="`n` must be 0 or more; got -1"):
         draw_audit(np.array([0, 0]), -1, np.random.default_rng(1))
+
+
+def test_too_many_draws_are_taken_back_where_most_was_given() -> None:
+    """8 of 1, 1, 1, 1, 40, 60, by hand: floors with one at least are 1, 1, 1, 1, 3, 4, three too many.
+
+    Exact shares of the last two are 320/104 = 3.08 and 480/104 = 4.62; taking one back at a time
+    where most is given beyond them leaves 1 and 3.
+    """
+    assert allocate(np.array([1, 1, 1, 1, 40, 60]), 8).tolist() == [1, 1, 1, 1, 1, 3]
+
+
+def test_each_stratum_has_its_own_share_and_interval() -> None:
+    """12 of 40: share .3, Wilson's limits (1927) 0.1807 and 0.4543, by the formula in fractions."""
+    got = estimate({"unanimous": 100}, {"unanimous": 40}, {"unanimous": 12}).strata[0]
+    assert (got.share, got.bound_if_clean) == (0.3, None)
+    z = 1.959963984540054
+    middle = (0.3 + z * z / 80) / (1 + z * z / 40)
+    half = z * np.sqrt(0.3 * 0.7 / 40 + z * z / 6400) / (1 + z * z / 40)
+    assert (got.low, got.high) == (pytest.approx(middle - half), pytest.approx(middle + half))
+
+
+def test_nothing_is_drawn_where_nothing_is_asked_for() -> None:
+    """A draw of none has no items and no chances; an empty stratum has none either."""
+    draw = draw_audit(np.array([0, 0, 1]), 0, np.random.default_rng(1))
+    assert draw.item_index.size == 0
+    assert draw.chances == {"unanimous": 0.0, "not queued": 0.0, "single": 0.0}
+    assert draw_audit(np.array([0, 0]), 1, np.random.default_rng(1)).chances["single"] == 0.0

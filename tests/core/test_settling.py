@@ -299,3 +299,37 @@ def test_no_cases_have_no_sums() -> None:
     none = np.zeros(0, dtype=np.int64)
     got = settled_base.case_sums(none, none)
     assert (got.size, got.dtype) == (0, np.int64)
+
+
+def test_figures_of_decimals_are_not_scaled() -> None:
+    """Labels in quarters: D_o and D_e after each step are those of measuring the corrected labels."""
+    table = {
+        1: [("A", Fraction(1, 4)), ("B", Fraction(3, 4))],
+        2: [("A", 2), ("B", Fraction(5, 4))],
+    }
+    table[3] = [("A", Fraction(1, 2)), ("B", Fraction(1, 2))]
+    agreement, _ = measured(table, "interval")
+    assert agreement.differences.denominator > 1
+    got = prospect(
+        agreement,
+        np.array([0, 1]),
+        consensus_of(agreement.profiles, agreement.function, agreement.values),
+    ).cautious
+    before = twin.alpha_by_definition(table, twin.interval)
+    first = twin.alpha_by_definition(
+        {**table, 1: [("A", Fraction(1, 2)), ("B", Fraction(1, 2))]}, twin.interval
+    )
+    for step, want in enumerate((before, first)):
+        assert got.observed_disagreement[step] == pytest.approx(float(want.observed), rel=1e-12)
+        assert got.expected_disagreement[step] == pytest.approx(float(want.expected), rel=1e-12)
+
+
+def test_the_first_label_of_the_list_counts_as_a_decision() -> None:
+    """Code 0 is a label like any other: settled to it, the item is settled and no longer disputed."""
+    table = {1: [("A", "a"), ("B", "b")], 2: [("A", "b"), ("B", "b")], 3: [("A", "a"), ("B", "b")]}
+    agreement, coded = measured(table, "nominal")
+    assert coded.values[0] == "a"
+    got = agreement_after(agreement, np.array([0]), np.array([0]))
+    assert (got.n_settled, got.n_cannot_be_coded, got.n_disputed_items) == (1, 0, 1)
+    want = twin.settled_alpha_by_definition(table, twin.nominal, {1: "a"})
+    assert got.agreement == pytest.approx(float(want), abs=1e-12)
