@@ -333,3 +333,23 @@ def test_the_first_label_of_the_list_counts_as_a_decision() -> None:
     assert (got.n_settled, got.n_cannot_be_coded, got.n_disputed_items) == (1, 0, 1)
     want = twin.settled_alpha_by_definition(table, twin.nominal, {1: "a"})
     assert got.agreement == pytest.approx(float(want), abs=1e-12)
+
+
+def test_decimals_of_seventeen_digits_are_settled_exactly() -> None:
+    """Totals beyond 64 bits beside small steps: both figures of each step equal the twin's."""
+    long = Fraction("0.30000000000000004")
+    table = {
+        1: [("A", long), ("B", Fraction("0.3"))],
+        2: [("A", 1), ("B", 1)],
+        3: [("A", 2), ("B", 5)],
+    }
+    agreement, coded = measured(table, "interval")
+    consensus = consensus_of(agreement.profiles, agreement.function, agreement.values)
+    got = prospect(agreement, np.array([0, 2]), consensus).cautious
+    mean = (long + Fraction("0.3")) / 2
+    rulings: list[tuple[Hashable, Any]] = [(1, mean), (3, Fraction(7, 2))]
+    want = twin.prospect_by_definition(table, twin.interval, rulings)
+    assert got.agreement == pytest.approx(
+        [float(each) for each in want if each is not None], rel=1e-12
+    )
+    assert coded.items == [1, 2, 3]

@@ -185,9 +185,10 @@ def _coordinate_sequence(
     x = widened(x, bound)
     delta, distinct = widened(moves.delta, bound), np.diff(moves.start)
     at = x[moves.value]
-    first = dot(base.marginals, x) + _running(case_sums(delta * at, distinct))
-    second = dot(base.marginals, x * x) + _running(case_sums(delta * at * at, distinct))
-    first, second = widened(first, bound), widened(second, bound)
+    # Small steps come back narrow, and the totals that they are added to need not be small.
+    moved = widened(_running(case_sums(delta * at, distinct)), bound)
+    squared = widened(_running(case_sums(delta * at * at, distinct)), bound)
+    first, second = dot(base.marginals, x) + moved, dot(base.marginals, x * x) + squared
     return np.asarray((2 * (base.n * second - first * first)).astype(np.float64))
 
 
