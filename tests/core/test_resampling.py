@@ -9,7 +9,7 @@ from reference.cases import CASES, measured, random_table, tables
 from reference.published import coder_rows, counts_table, example
 from relook.core import resampling
 from relook.core.agreement import NO_VARIATION, NOTHING_PAIRABLE, measure_agreement
-from relook.core.alpha_of_weights import AlphaOfWeights
+from relook.core.alpha_of_weights import TOO_MANY_VALUES, AlphaOfWeights
 from relook.core.differences import Values, difference_function
 from relook.core.labels import CodedLabels
 from relook.core.resampling import (
@@ -371,3 +371,22 @@ def test_one_item_gives_no_unpaired_interval():
     many, _ = measured({1: [("A", 1), ("B", 2)], 2: [("A", 1), ("B", 1)], 3: [("A", 2), ("B", 2)]})
     found = unpaired_interval(many, lone, rng=rng(), resamples=50, seed=1)
     assert (found.interval, found.none_because) == (None, ONE_TO_DRAW)
+
+
+@pytest.mark.parametrize("name", ["ratio", "polar"])
+def test_too_many_values_are_not_compared_in_each_resample(name, monkeypatch):
+    """Beyond the limit the interval is left out, with the reason; closed forms have no limit."""
+    monkeypatch.setattr("relook.core.alpha_of_weights.MOST_TABLED_VALUES", 2)
+    monkeypatch.setattr("relook.core.alpha_of_weights.MOST_RESAMPLED_VALUES", 3)
+    table = random_table(rng(), n_items=12)
+    many, _ = measured(table, name)
+    found = alpha_interval(many, rng(), resamples=20)
+    assert (found.interval, found.none_because) == (None, TOO_MANY_VALUES)
+    for compared in (
+        paired_interval(many, many, rng(), resamples=20),
+        unpaired_interval(many, many, rng(), resamples=20),
+    ):
+        assert (compared.interval, compared.none_because) == (None, TOO_MANY_VALUES)
+        assert compared.difference == 0
+    for closed in ("nominal", "ordinal", "interval", "circular"):
+        assert alpha_interval(measured(table, closed)[0], rng(), resamples=20).interval is not None

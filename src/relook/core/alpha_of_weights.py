@@ -15,6 +15,13 @@ from relook.core.sparse import SparseCounts
 
 #: Values up to which δ² between all of them is kept as a table (72 MB).
 MOST_TABLED_VALUES = 3_000
+#: Values beyond which a function that compares every two of them is not resampled: each resample
+#: would take some 25 million differences.
+MOST_RESAMPLED_VALUES = 5_000
+TOO_MANY_VALUES = (
+    f"with more than {MOST_RESAMPLED_VALUES:,} distinct labels, comparing every two of them in "
+    "each resample takes too long"
+)
 
 
 class AlphaOfWeights:
@@ -53,6 +60,17 @@ class AlphaOfWeights:
         if self._moves:
             tables.append(self._values_of_profiles)
         self.width = max(1, *(table.n_terms for table in tables))
+
+    @property
+    def takes_too_long(self) -> bool:
+        """Whether there are too many values to compare every two of them time and again."""
+        return (
+            self._tabled is None
+            and self._points is None
+            and not self._moves
+            and not isinstance(self._differences, NominalDifferences)
+            and self._profiles.n_values > MOST_RESAMPLED_VALUES
+        )
 
     def alphas(self, weights: FloatArray) -> FloatArray:
         """Return alpha of each weighting; nan where it is undefined.

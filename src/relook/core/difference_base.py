@@ -295,11 +295,14 @@ class DifferenceFunction(ABC):
         Whether δ² changes when the counts of the values change.
     options : tuple of str
         What the function must be told besides.
+    compares_every_two : bool
+        Whether D_e needs every two distinct values, so that time grows with their square.
     """
 
     name: ClassVar[str]
     needs: ClassVar[Needs]
     moves_with_marginals: ClassVar[bool] = False
+    compares_every_two: ClassVar[bool] = False
     options: ClassVar[tuple[str, ...]] = ()
 
     @abstractmethod

@@ -125,6 +125,7 @@ class Ratio(DifferenceFunction):
 
     name = "ratio"
     needs = "number"
+    compares_every_two = True
 
     def check(self, values: Values) -> list[tuple[int, str]]:
         """Return the values below 0."""

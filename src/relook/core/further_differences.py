@@ -35,6 +35,9 @@ from relook.errors import RelookError, listed
 #: From pairs of value codes to the sizes of their sets' intersections and unions.
 _Meeting = Callable[[IntArray, IntArray], tuple[IntArray, IntArray]]
 
+_A_NUMBER = "write it in digits, with a point before decimals"
+_ENDS = "give the lowest and the highest number that the scale has"
+
 
 @dataclass(frozen=True, slots=True)
 class DifferenceTable:
@@ -86,7 +89,10 @@ class Circular(DifferenceFunction):
         self._check_options(options)
         period = exact_number(options["period"], "period")
         if period <= 0:
-            raise RelookError(f"the period of circular differences must be above 0; got {period}")
+            raise RelookError(
+                f"the period of circular differences must be above 0; got {period}",
+                mend="give how many steps lead round once, such as 24 for hours",
+            )
         return type(self)(period)
 
     def bind(self, values: Values, marginals: IntArray) -> Differences:
@@ -105,6 +111,7 @@ class Polar(DifferenceFunction):
 
     name = "polar"
     needs = "number"
+    compares_every_two = True
     options = ("ends",)
 
     def __init__(self, ends: tuple[Fraction, Fraction] | None = None) -> None:
@@ -115,10 +122,14 @@ class Polar(DifferenceFunction):
         self._check_options(options)
         given = options["ends"]
         if not isinstance(given, list | tuple) or len(given) != 2:
-            raise RelookError(f"`ends` must be two numbers, such as [0, 10]; got {given!r}")
+            raise RelookError(
+                f"`ends` must be two numbers, such as [0, 10]; got {given!r}", mend=_ENDS
+            )
         low, high = (exact_number(end, "ends") for end in given)
         if not low < high:
-            raise RelookError(f"the first of `ends` must be below the second; got {given!r}")
+            raise RelookError(
+                f"the first of `ends` must be below the second; got {given!r}", mend=_ENDS
+            )
         return type(self)((low, high))
 
     def check(self, values: Values) -> list[tuple[int, str]]:
@@ -157,6 +168,7 @@ class _OfTexts(DifferenceFunction):
     """Differences read off the texts of the labels, with a separator."""
 
     needs = "text"
+    compares_every_two = True
     options = ("separator",)
 
     def __init__(self, separator: str | None = None) -> None:
@@ -167,7 +179,10 @@ class _OfTexts(DifferenceFunction):
         self._check_options(options)
         separator = options["separator"]
         if not isinstance(separator, str) or not separator.strip():
-            raise RelookError(f'`separator` must be a mark such as ";"; got {separator!r}')
+            raise RelookError(
+                f'`separator` must be a mark such as ";"; got {separator!r}',
+                mend="give the mark that stands between the parts of a label",
+            )
         return type(self)(separator)
 
     def parts(self, text: str) -> list[str]:
@@ -253,6 +268,17 @@ class Tree(_OfTexts):
 
     name = "tree"
 
+    def check(self, values: Values) -> list[tuple[int, str]]:
+        """Return the codes with nothing between two separators, which is a slip of the keyboard."""
+        if self.separator is None or values.texts is None:
+            return []
+        said = f'has an empty step between two "{self.separator}"'
+        return [
+            (code, said)
+            for code, text in enumerate(values.texts)
+            if any(not step.strip() for step in text.split(self.separator)[1:-1])
+        ]
+
     def _bind(self, parts: list[list[str]]) -> Differences:
         depth = np.asarray([len(each) for each in parts], dtype=np.int64)
         deepest = max(1, int(depth.max(initial=0)))
@@ -280,6 +306,7 @@ class Table(DifferenceFunction):
 
     name = "table"
     needs = "text"
+    compares_every_two = True
     options = ("table",)
 
     def __init__(self, table: DifferenceTable | None = None) -> None:
@@ -342,11 +369,11 @@ def exact_number(given: object, option: str) -> Fraction:
         Not a number.
     """
     if isinstance(given, bool) or not isinstance(given, int | float | str | Fraction):
-        raise RelookError(f"`{option}` must be a number; got {given!r}")
+        raise RelookError(f"`{option}` must be a number; got {given!r}", mend=_A_NUMBER)
     try:
         return given if isinstance(given, Fraction) else Fraction(str(given).strip())
     except (ValueError, ZeroDivisionError):
-        raise RelookError(f"`{option}` must be a number; got {given!r}") from None
+        raise RelookError(f"`{option}` must be a number; got {given!r}", mend=_A_NUMBER) from None
 
 
 def _plain(number: Fraction) -> str:

@@ -21,7 +21,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.alpha_of_weights import AlphaOfWeights
+from relook.core.alpha_of_weights import TOO_MANY_VALUES, AlphaOfWeights
 from relook.core.exact import FloatArray, IntArray
 from relook.core.sparse import SparseCounts
 from relook.errors import RelookError
@@ -149,6 +149,8 @@ def alpha_interval(
     if n_units < 2:
         return IntervalResult(None, ONE_TO_DRAW)
     engine = AlphaOfWeights(agreement)
+    if engine.takes_too_long:
+        return IntervalResult(None, TOO_MANY_VALUES)
     alphas = np.concatenate(
         [engine.alphas(weights) for weights in draw.blocks(rng, resamples, engine.width)]
     )
@@ -224,6 +226,8 @@ def paired_interval(
 
     if difference is None:
         return result(None, "alpha is undefined on the shared items")
+    if any(engine.takes_too_long for engine in engines):
+        return result(None, TOO_MANY_VALUES)
     draw, n_units = _drawing(joint_of_item, joint.size, cluster_of_item, shared)
     if n_units < 2:
         return result(None, ONE_TO_DRAW)
@@ -272,6 +276,8 @@ def unpaired_interval(
             agreement.profile_of_item[items], agreement.profiles.n_profiles, None, items
         )
         engine = AlphaOfWeights(agreement)
+        if engine.takes_too_long:
+            return DifferenceResult(False, *known, difference, None, None, TOO_MANY_VALUES)
         blocks = draw.blocks(rng, resamples, engine.width)
         drawn.append(np.concatenate([engine.alphas(weights) for weights in blocks]))
         units.append(n_units)

@@ -12,7 +12,7 @@ from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
 
-_BAR_WIDTH = 12
+_BAR, _BAR_WIDTH = "▪", 12
 _TEXT_WIDTH = 48
 UNDEFINED = "undefined"
 
@@ -44,13 +44,20 @@ def small_table(
     numbers : sequence of int
         Positions of the columns to align on the right.
     """
+    lines = list(rows)
     table = Table(box=None, pad_edge=False, header_style="underline", padding=(0, 2, 0, 0))
     for position, header in enumerate(headers):
         right = position in numbers
+        # A bar that goes on in the next line would look like a shorter one.
+        bars = bool(lines) and not any(row[position].strip(_BAR) for row in lines)
         table.add_column(
-            Text(header), justify="right" if right else "left", no_wrap=right, overflow="fold"
+            Text(header),
+            justify="right" if right else "left",
+            no_wrap=right or bars,
+            overflow="fold",
+            min_width=_BAR_WIDTH if bars and any(row[position] for row in lines) else None,
         )
-    for row in rows:
+    for row in lines:
         table.add_row(*(Text(cell) for cell in row))
     return Padding(table, (0, 0, 0, 2), expand=False)
 
@@ -104,7 +111,7 @@ def bar(value: float, most: float) -> str:
     """A bar for a value between 0 and `most`; it stands beside the number, never instead of it."""
     if most <= 0:
         return ""
-    return "▪" * max(0, round(_BAR_WIDTH * value / most))
+    return _BAR * max(0, round(_BAR_WIDTH * value / most))
 
 
 def shortened(text: str, width: int = _TEXT_WIDTH) -> str:
