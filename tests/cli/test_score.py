@@ -320,3 +320,29 @@ def test_score_selects_what_queue_would_send(ferry, capsys):
     row, sent = held["variables"][0], queued["variables"][0]
     assert row["share_selected"] == sent["share_of_disagreement"]
     assert row["projected_agreement"] == sent["projected_agreement"]
+
+
+def test_labels_that_read_alike_are_told_beside_alpha(tmp_path, capsys):
+    """Case lowers alpha as if coders differed; that stands under the figure."""
+    file = tmp_path / "labels.csv"
+    rows = [
+        ("1", "a", "Billing"),
+        ("1", "b", "billing"),
+        ("2", "a", "Refund"),
+        ("2", "b", "Refund"),
+    ]
+    file.write_text(
+        "item,coder,label\n" + "".join(",".join(r) + "\n" for r in rows), encoding="utf-8"
+    )
+    assert run(["score", str(file)]) == 0
+    out = " ".join(capsys.readouterr().out.split())
+    assert 'labels that read alike count as different: "billing" beside "Billing"' in out
+    assert "(upper and lower case); `relook check` lists them" in out
+
+
+def test_nothing_typed_shows_the_help_and_no_empty_error(capsys):
+    """Bare `relook` is a question, not a mistake with an empty name."""
+    assert run([]) == 2
+    held = capsys.readouterr()
+    assert "relook queue my_labels.csv" in held.out
+    assert "error" not in held.err

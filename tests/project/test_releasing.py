@@ -236,8 +236,8 @@ def test_the_methods_statement_carries_each_figure_with_its_condition(project):
     first = load(project).agreements["topic"]
     for sentence in (
         (
-            'On "topic", 9 items were given 20 labels by 3 coders; 8 items have two labels or more, '
-            "and coders differ on 6 of them."
+            'On "topic", 9 items were given 20 labels by 3 coders; 8 items have two labels or more '
+            "(19 labels, which alpha is of), and coders differ on 6 of them."
         ),
         (
             "Krippendorff's alpha of the labels that coders made independently (nominal differences) "

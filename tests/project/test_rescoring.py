@@ -266,7 +266,7 @@ def test_the_audit_sentence_carries_its_counts_share_and_interval(tmp_path):
     )
     cautions = sentences.audit_cautions(found, held.n_sent_since_audit)
     assert cautions[0].startswith("1 of them is a split or waits for a second adjudicator")
-    assert "an audit shows 3.9%" in cautions[-1]
+    assert "an audit would show 3.9%" in cautions[-1]
 
 
 def test_a_stratum_without_a_ruling_gives_no_share(tmp_path):

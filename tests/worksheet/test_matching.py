@@ -190,3 +190,11 @@ def test_any_text_is_read_without_a_fault(written: str) -> None:
     for variable in (choice("delay", "7"), NUMBER, SET):
         read = match_decision(text(written), variable)
         assert read.state != "unmatched" or (read.reason and read.mend)
+
+
+def test_a_cell_that_names_two_labels_gets_no_suggestion() -> None:
+    """Which of them is meant is the adjudicator's to say, not the mend's."""
+    variable = SheetVariable(name="topic", entry="choice", labels=("cancellation", "price", "crew"))
+    got = match_decision(Cell("text", "cancellation / price"), variable)
+    assert got.state == "unmatched"
+    assert got.mend.startswith('it names "cancellation", "price": ask which one is meant')

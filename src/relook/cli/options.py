@@ -68,7 +68,12 @@ HoursOption = Annotated[
 ]
 SecondsOption = Annotated[
     float | None,
-    typer.Option("--seconds-per-item", min=0.1, metavar="S", help="Time that a row takes."),
+    typer.Option(
+        "--seconds-per-item",
+        min=0.1,
+        metavar="S",
+        help="Time that an item takes, all its rows together.",
+    ),
 ]
 RankByOption = Annotated[
     str | None,

@@ -44,6 +44,8 @@ class Selection:
         Share of each variable's D_o in its selected rows; nan where D_o is 0 or undefined.
     seconds : float or None
         Adjudicator time, audit items and overlap included, where the time per item is known.
+    seconds_per_item : float or None
+        What it was reckoned with.
     """
 
     n_items: int
@@ -56,6 +58,7 @@ class Selection:
     led_by_variable: IntArray
     share_per_variable: FloatArray
     seconds: float | None
+    seconds_per_item: float | None = None
 
     def sentence(self, ranking: Ranking) -> str:
         """Say how many items were taken, what bound, and which variable filled the queue."""
@@ -179,6 +182,7 @@ def _selection(
         seconds=None
         if seconds_per_item is None
         else seconds_per_item * _n_rulings(n, overlap, n_audit_items),
+        seconds_per_item=seconds_per_item,
     )
 
 

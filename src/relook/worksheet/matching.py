@@ -237,6 +237,10 @@ def _match_label(cell: Cell, variable: SheetVariable, found: str) -> Reading:
 
 def _nearest_mend(text: str, labels: Iterable[str]) -> str:
     known = [*labels, CANNOT_BE_CODED, WITHDRAW]
+    said = folded(text)
+    named = [label for label in labels if folded(label) and folded(label) in said]
+    if len(named) > 1:
+        return f"it names {listed(named)}: ask which one is meant, and write that alone"
     close = nearest(loosened(text), known)
     if close is not None:
         return f'change the cell to "{close}"'

@@ -141,7 +141,8 @@ def _add_marks(
     kinds = {entry_kind(worksheet, v.name) for v in worksheet.variables}
     filled = f"LEN({decision})>0"
     if "set" not in kinds:
-        known = f"SUMPRODUCT(EXACT({lists.choices(variable)},{decision})*1)>0"
+        # `=` ignores case, as collecting does; what would be taken is not marked.
+        known = f"SUMPRODUCT(({lists.choices(variable)}=TRIM({decision}))*1)>0"
         if kinds != {"choice"}:
             number = f"IFERROR(VALUE({decision}),9.999E+307)"
             fits = f"AND({lists.is_number(variable)}=1,{lists.within_bounds(variable, number)})"

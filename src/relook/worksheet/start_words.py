@@ -24,8 +24,8 @@ CAUTIONS = (
         "to, and tell whoever sent you this sheet if it is too much: nobody expects you to go on."
     ),
     (
-        "What you read may be private. Keep this file to yourself, and delete it once you have "
-        "sent it back."
+        "What you read may be private. Keep this file to yourself, and delete it once whoever sent "
+        "it says that all is settled."
     ),
     (
         "If a label could touch somebody's health, safety or legal position, local rules and "

@@ -26,8 +26,20 @@ def collect_screen(result: CollectedAll, project: Project) -> RenderableType:
         parts += [Text("")] if parts else []
         parts += _collected(result.codings, project, "coding sheet", "label")
     done = [part for part in (result.rounds, result.codings) if part is not None]
-    if any(not part.dry_run and (part.accepted or part.unchanged) for part in done):
-        parts += [Text(""), note(f"next: relook rescore {project.shown_root}")]
+    if not result.is_complete:
+        sheet = (
+            ""
+            if result.rounds is None or result.rounds.is_complete
+            else (", or have just these rows filled in anew: add --mend-sheet FILE.xlsx")
+        )
+        parts += [
+            Text(""),
+            note(f"next: mend the cells named above and run relook collect again{sheet}"),
+        ]
+    elif any(not part.dry_run and (part.accepted or part.unchanged) for part in done):
+        splits = result.rounds is not None and result.rounds.splits
+        step = "queue {} --splits" if splits else "rescore {}"
+        parts += [Text(""), note(f"next: relook {step.format(project.shown_root)}")]
     return stacked(*parts)
 
 

@@ -37,8 +37,8 @@ def queue_screen(run: QueueRun) -> RenderableType:
         clean = (
             ""
             if limit is None
-            else " If all are upheld, the share of those that would not be lies below "
-            f"{limit:.0%} (95% interval, strata weighed by their sizes)."
+            else f" Even if all {planned.n_audit_items:,} are upheld, up to {limit:.0%} of those "
+            "items may deserve another label (95% interval, strata weighed by their sizes)."
         )
         parts.append(
             note(
@@ -46,6 +46,8 @@ def queue_screen(run: QueueRun) -> RenderableType:
                 f"would be released without a decision.{clean}"
             )
         )
+    if ordering.selection.seconds is not None and ordering.selection.n_items:
+        parts.append(note(_time(run, ordering.selection.seconds)))
     if ordering.selection.n_items:
         parts += [Text(""), _variables(run)]
         parts.append(
@@ -56,6 +58,19 @@ def queue_screen(run: QueueRun) -> RenderableType:
         )
     parts += [Text(""), heading(f"{verb}"), _files(run)]
     parts += [note(f"{said}.") for said in planned.plan.said]
+    bare = [
+        held.variable.name
+        for held in run.loaded.labels.variables.values()
+        if held.variable.code_book is None
+    ]
+    if bare:
+        parts.append(
+            note(
+                f"No code book says what the labels of {', '.join(bare)} mean, so the worksheets "
+                "list them bare: name one by code_book in relook.toml (columns label, meaning, "
+                "example)."
+            )
+        )
     if planned.plan.unplanned:
         items = ", ".join(held.item for held in planned.plan.unplanned[:12])
         parts.append(note(f"Left for you: {items}."))
@@ -73,6 +88,16 @@ def queue_screen(run: QueueRun) -> RenderableType:
             ),
         ]
     return stacked(*parts)
+
+
+def _time(run: QueueRun, seconds: float) -> str:
+    each = run.planned.ordering.selection.seconds_per_item
+    minutes = max(1, round(seconds / 60))
+    spent = f"{minutes} min" if minutes < 120 else f"{minutes / 60:.1f} h"
+    return (
+        f"At {each:g} s an item, all its rows together, that is about {spent} of adjudicators' "
+        "time, audit items and second rulings included (seconds_per_item sets it)."
+    )
 
 
 def _variables(run: QueueRun) -> RenderableType:

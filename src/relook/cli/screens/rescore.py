@@ -35,7 +35,16 @@ def rescore_screen(held: Rescore, compared: CodingsCompared | None = None) -> Re
     stale = sentences.stale_sentence(held)
     if stale is not None:
         parts += [heading("decisions made on other labels"), note(stale), Text("")]
-    parts.append(note(f"next: relook release {held.loaded.project.shown_root}"))
+    shown = held.loaded.project.shown_root
+    unsettled = sum(
+        scored.states["split"] + scored.states["unconfirmed"] for scored in held.variables
+    )
+    first = (
+        f"relook queue {shown} --splits for what needs a second adjudicator, or "
+        if unsettled
+        else ""
+    )
+    parts.append(note(f"next: {first}relook release {shown}"))
     return stacked(*parts)
 
 
@@ -103,7 +112,7 @@ def _figures(held: Rescore, scored: VariableRescore) -> RenderableType:
         )
     rows.append(
         (
-            "agreement in the corrected data",
+            "not alpha: agreement in the corrected data",
             coefficient(after.agreement),
             amount(after.observed_disagreement),
             amount(after.expected_disagreement),

@@ -158,12 +158,13 @@ def _standing(held: Explanation) -> list[str]:
     elif held.tied:
         lines.append(f"no consensus label: a tie of {', '.join(held.tied)}")
     if held.doubt is not None:
-        said = f"doubt {held.doubt:.3g}: the estimated chance that the consensus label is wrong"
-        if held.tied:
-            said = (
-                f"doubt {held.doubt:.3g}: the estimated chance that the likeliest of them is wrong"
-            )
-        lines.append(f"{said} (Dawid & Skene 1979, by how all coders label)")
+        # The model takes coders' errors for independent, so that its extremes promise too much.
+        doubt = "below 1%" if held.doubt < 0.01 else f"{held.doubt:.0%}"
+        of = "the likeliest of them" if held.tied else "the consensus label"
+        lines.append(
+            f"doubt {doubt}: the chance that {of} is wrong, by a model of how each coder labels "
+            "(Dawid & Skene 1979) that takes their errors for independent"
+        )
     else:
         lines.append(f"doubt is undefined: {held.doubt_undefined_because}")
     return lines

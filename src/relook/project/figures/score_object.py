@@ -26,6 +26,10 @@ from relook.project.figures.use_tables import (
     higher_rows,
     label_use_rows,
 )
+from relook.tables.twins import Twins, near_twins
+
+#: Distinct labels beyond which nobody has written them by hand.
+_MOST_READ = 2_000
 
 
 def score_object(score: Score) -> Row:
@@ -174,12 +178,27 @@ def variable_warnings(scored: VariableScore) -> list[str]:
         warnings.append(f"alpha is undefined: {scored.agreement.undefined_because}")
     if scored.interval.warning is not None:
         warnings.append(scored.interval.warning)
+    twins = _twins(scored)
+    if twins:
+        more = "" if len(twins) == 1 else f", and {len(twins) - 1:,} more such pairs"
+        warnings.append(
+            f'labels that read alike count as different: "{twins[0].other}" beside '
+            f'"{twins[0].kept}" ({twins[0].how}){more}; `relook check` lists them with their rows'
+        )
     model = scored.doubt.model
     if model is not None and not model.converged:
         warnings.append(
             f"the estimate of doubt, which breaks ties, had not settled after {model.steps:,} steps"
         )
     return warnings
+
+
+def _twins(scored: VariableScore) -> list[Twins]:
+    """Labels that differ by what a reader overlooks; none among numbers, or so many labels."""
+    texts = scored.held.texts
+    if scored.held.values.numerators is not None or len(texts) > _MOST_READ:
+        return []
+    return near_twins(dict(zip(texts, scored.label_parts.n_labels.tolist(), strict=True)))
 
 
 def changed_warning(files: Iterable[str]) -> str:

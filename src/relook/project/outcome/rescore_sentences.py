@@ -185,10 +185,9 @@ def audit_cautions(held: AuditFindings, n_sent_since: int) -> tuple[str, ...]:
         )
     if any(part.n_otherwise for part in held.result.strata):
         said.append(
-            f"Adjudicators slip too: where {SLIP_EXAMPLE.true_share:.0%} of the items are wrong "
-            "and "
-            f"{SLIP_EXAMPLE.slip_rate:.0%} of the rulings are slips, an audit shows "
-            f"{SLIP_EXAMPLE.share_shown:.1%}."
+            "Adjudicators slip too, and their slips count here: in a made example of "
+            f"{SLIP_EXAMPLE.true_share:.0%} wrong items and {SLIP_EXAMPLE.slip_rate:.0%} slips an "
+            f"audit would show {SLIP_EXAMPLE.share_shown:.1%}."
         )
     return tuple(said)
 

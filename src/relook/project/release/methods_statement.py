@@ -111,8 +111,9 @@ def _labels(name: str, agreement: Agreement, first: Loaded) -> str:
     without = f" ({len(left):,} more left out)" if left else ""
     return (
         f'On "{name}", {agreement.n_items:,} items were given {agreement.n_labels:,} labels{by}'
-        f"{without}; {agreement.n_pairable_items:,} items have two labels or more, and coders "
-        f"differ on {agreement.n_disputed_items:,} of them."
+        f"{without}; {agreement.n_pairable_items:,} items have two labels or more "
+        f"({agreement.n_pairable_labels:,} labels, which alpha is of), and coders differ on "
+        f"{agreement.n_disputed_items:,} of them."
     )
 
 
