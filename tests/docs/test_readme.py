@@ -1,7 +1,7 @@
 """Every command in README.md runs, in its order, and every output shown there is what it prints.
 
-A fenced block marked `sh` holds commands; a block marked `text` right after it holds lines of what
-they print, "…" standing for lines left out. The two set-up commands run in .ci/run, which takes
+A fenced block marked `sh` holds commands, one marked `python` a program; a block marked `text` right
+after it holds lines of what they print, "…" standing for lines left out. The two set-up commands run in .ci/run, which takes
 them from the README too.
 """
 
@@ -19,7 +19,7 @@ import pytest
 
 ROOT = Path(__file__).parents[2]
 README = ROOT / "README.md"
-BLOCK = re.compile(r"^```(sh|text)\n(.*?)^```\n", re.MULTILINE | re.DOTALL)
+BLOCK = re.compile(r"^```(sh|python|text)\n(.*?)^```\n", re.MULTILINE | re.DOTALL)
 SKIPPED = "…"
 
 
@@ -45,8 +45,8 @@ def workplace(tmp_path, monkeypatch) -> Path:
     return tmp_path
 
 
-def run(commands: str, folder: Path) -> str:
-    """Run the commands of a block as a shell would, relook being this one."""
+def run(commands: str, folder: Path, kind: str = "sh") -> str:
+    """Run a block in a shell, relook and Python being these ones."""
     environment = {
         **os.environ,
         "SOURCE_DATE_EPOCH": "1924992000",
@@ -54,6 +54,8 @@ def run(commands: str, folder: Path) -> str:
         "PATH": f"{Path(sys.executable).parent}{os.pathsep}{os.environ['PATH']}",
         "PYTHONUTF8": "1",
     }
+    if kind == "python":
+        commands = f"{shlex.quote(sys.executable)} - <<'PROGRAM'\n{commands}PROGRAM\n"
     script = f'set -e\nrelook() {{ {shlex.quote(sys.executable)} -m relook "$@"; }}\n{commands}'
     done = subprocess.run(
         ["bash", "-c", script],
@@ -92,7 +94,7 @@ def test_every_command_of_the_readme_runs_and_prints_what_is_shown(workplace):
     assert sum(kind == "sh" for kind, _, _ in found) >= 5
     printed: list[str] = []
     for kind, body, _ in found:
-        if kind == "sh":
-            printed = [line.rstrip() for line in run(body, workplace).splitlines()]
+        if kind != "text":
+            printed = [line.rstrip() for line in run(body, workplace, kind).splitlines()]
         else:
             assert missing_line(shown_lines(body), printed) is None, "\n".join(printed)
