@@ -6,11 +6,26 @@ need pandas or openpyxl are imported inside the commands, so that `relook --help
 
 from __future__ import annotations
 
+import contextlib
+import os
+import signal
 import sys
 
 
 def main() -> None:
     """Run the command that was typed; the entry point of `relook`."""
-    from relook.cli.app import run
+    try:
+        from relook.cli.app import run
 
-    sys.exit(run())
+        code = run()
+    except KeyboardInterrupt:  # while modules were being imported
+        code = 130
+    # All is written and said by now; a late Ctrl-C would only end Python in the midst of its end.
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    if code == 130:
+        # Python itself would end by the signal where an import was interrupted, not by the code.
+        for stream in (sys.stdout, sys.stderr):
+            with contextlib.suppress(OSError, ValueError):
+                stream.flush()
+        os._exit(code)
+    sys.exit(code)

@@ -58,7 +58,8 @@ def run(arguments: Sequence[str] | None = None) -> int:
     """
     try:
         code = app(args=arguments, standalone_mode=False, prog_name="relook")
-    except typer.Abort:
+    except (typer.Abort, KeyboardInterrupt):
+        # Before a command began or after it ended; `running` answers what happens within it.
         return ExitCode.INTERRUPTED
     except typer.Exit as error:
         return error.exit_code
@@ -67,6 +68,8 @@ def run(arguments: Sequence[str] | None = None) -> int:
         says = getattr(error, "format_message", None)
         if says is None:
             raise
+        if not says():  # bare `relook`, which has shown its help
+            return ExitCode.COULD_NOT
         context = getattr(error, "ctx", None)
         path = context.command_path if context is not None else "relook"
         Terminal().error(RelookError(says(), mend=f"see `{path} --help`"))

@@ -41,7 +41,8 @@ def open_target(target: Path, terminal: Terminal, *, difference: str | None = No
             where=Place(str(target)),
             mend="check the path; name a project folder or a label table",
         )
-    guessed = guessed_project([target], _overrides(difference))
+    with terminal.doing() as doing:
+        guessed = guessed_project([target], _overrides(difference), doing)
     for line in guessed.said:
         terminal.say(line)
     terminal.say(f"the flags named above are those of `relook new {target}`")

@@ -6,7 +6,7 @@ import contextlib
 import json
 import os
 import sys
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from datetime import UTC, datetime
 from typing import IO, Any
 
@@ -96,6 +96,21 @@ class Terminal:
         with Progress(*columns, console=self.err, transient=True) as progress:
             progress.add_task(what, total=total)
             yield progress
+
+    @contextlib.contextmanager
+    def doing(self) -> Iterator[Callable[[str], None]]:
+        """Give work something to tell what it is doing; shown where stderr is a terminal.
+
+        Yields
+        ------
+        callable
+            Takes what is being done, such as "ranking items"; the line is gone at the end.
+        """
+        if self.quiet or not self.err.is_terminal:
+            yield lambda text: None
+            return
+        with self.err.status("") as status:
+            yield lambda text: status.update(Text(text))
 
     @staticmethod
     def now() -> datetime:

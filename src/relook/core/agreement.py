@@ -100,7 +100,7 @@ class Agreement:
         """Coders with a label at least; 0 where the table holds counts."""
         if self.labels.coder_index is None:
             return 0
-        return int(np.unique(self.labels.coder_index).size)
+        return int(np.count_nonzero(np.bincount(self.labels.coder_index)))
 
 
 def measure_agreement(

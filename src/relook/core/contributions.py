@@ -28,9 +28,11 @@ from relook.core.exact import (
     FloatArray,
     IntArray,
     grouped_sums,
+    numbered,
     quotients,
     widened,
 )
+from relook.core.labels import CodedLabels
 from relook.core.ties import tie_levels
 from relook.errors import RelookError
 
@@ -151,18 +153,46 @@ def label_parts(agreement: Agreement) -> FloatArray:
 
 def label_entries(agreement: Agreement) -> IntArray:
     """Return the profile entry of each label, shape (n_labels,)."""
+    runs = list(_entries_by_block(agreement))
+    return np.concatenate([entry for _, entry in runs]) if runs else np.zeros(0, dtype=np.int64)
+
+
+def coder_entries(agreement: Agreement) -> IntArray:
+    """Return how many labels each coder gave of each profile entry.
+
+    Returns
+    -------
+    int array of shape (n_coders, n_entries)
+
+    Raises
+    ------
+    RelookError
+        The labels carry no coders.
+    """
+    coder_index(agreement)
+    n_coders, n_entries = agreement.labels.n_coders, agreement.profiles.value_index.size
+    given = np.zeros(n_coders * n_entries, dtype=np.int64)
+    for run, entry in _entries_by_block(agreement):
+        assert run.coder_index is not None
+        given += np.bincount(
+            run.coder_index.astype(np.int64) * n_entries + entry, minlength=given.size
+        )
+    return given.reshape(n_coders, n_entries)
+
+
+def _entries_by_block(agreement: Agreement) -> Iterator[tuple[CodedLabels, IntArray]]:
+    """Yield the labels in runs, with the profile entry of each."""
     profiles, labels = agreement.profiles, agreement.labels
-    profile = agreement.profile_of_item[labels.item_index]
     # Within a profile the values ascend, so (profile, value) numbers the entries in order.
     wide = max(1, profiles.n_values)
     keys = profiles.profile_of_entry * wide + profiles.value_index
-    if keys.size == 0:
-        return np.zeros(0, dtype=np.int64)
-    if profiles.n_profiles * wide <= 4 * labels.n_labels:
-        entry = np.zeros(profiles.n_profiles * wide, dtype=np.int64)
-        entry[keys] = np.arange(keys.size)
-        return np.asarray(entry[profile * wide + labels.value_index])
-    return np.asarray(np.searchsorted(keys, profile * wide + labels.value_index))
+    lookup = profiles.n_profiles * wide <= 4 * labels.n_labels
+    entry_of_key = np.zeros(profiles.n_profiles * wide if lookup else 0, dtype=np.int64)
+    if lookup:
+        entry_of_key[keys] = np.arange(keys.size)
+    for run in labels.blocks():
+        key = agreement.profile_of_item[run.item_index] * wide + run.value_index
+        yield run, entry_of_key[key] if lookup else np.searchsorted(keys, key)
 
 
 def coder_parts(agreement: Agreement) -> Parts:
@@ -173,8 +203,13 @@ def coder_parts(agreement: Agreement) -> Parts:
     RelookError
         The labels carry no coders.
     """
-    coder = coder_index(agreement)
-    return _parts_of_labels(agreement, coder, agreement.labels.n_coders)
+    given = coder_entries(agreement)
+    profiles = agreement.profiles
+    pairable = profiles.size[profiles.profile_of_entry] >= 2
+    contribution = given @ entry_parts(agreement)
+    n_labels = given[:, pairable].sum(axis=1)
+    # Each of its pairs has its other side elsewhere, so half of what it is involved in is its own.
+    return _parts(agreement, contribution, 2 * contribution, n_labels, n_labels)
 
 
 def group_parts(agreement: Agreement, group_of_item: IntArray, n_groups: int) -> Parts:
@@ -206,19 +241,17 @@ def coder_pair_parts(agreement: Agreement) -> PairParts:
     Takes time in proportion to the pairs of labels within items and memory in proportion to the
     labels and to the pairs of coders that occur.
     """
-    coder = coder_index(agreement)
+    coder_index(agreement)
     n_coders = agreement.labels.n_coders
     keys: list[IntArray] = []
     parts: list[FloatArray] = []
     counts: list[IntArray] = []
-    for first, second, part in _label_pairs(agreement):
-        low = np.minimum(coder[first], coder[second])
-        high = np.maximum(coder[first], coder[second])
-        found, which, often = np.unique(
-            low * n_coders + high, return_inverse=True, return_counts=True
-        )
+    for run, first, second, apart, part in _label_pairs(agreement):
+        coder = np.asarray(run.coder_index, dtype=np.int64)
+        low, high = np.minimum(coder[first], coder[second]), np.maximum(coder[first], coder[second])
+        found, which, often = numbered(low * n_coders + high, n_coders**2)
         keys.append(found)
-        parts.append(grouped_sums(which, part, found.size))
+        parts.append(grouped_sums(which[apart], part, found.size))
         counts.append(often)
     key, part, count = _joined(keys, parts, counts)
     first, second = np.divmod(key, max(1, n_coders))
@@ -286,16 +319,6 @@ def coder_index(agreement: Agreement) -> IntArray:
     return coder
 
 
-def _parts_of_labels(agreement: Agreement, group: IntArray, n_groups: int) -> Parts:
-    """Parts of groups of labels none of which holds two labels of one item."""
-    labels = agreement.labels
-    pairable = labels.labels_per_item[labels.item_index] >= 2
-    contribution = grouped_sums(group, label_parts(agreement), n_groups)
-    n_labels = np.bincount(group[pairable], minlength=n_groups)
-    # Each of its pairs has its other side elsewhere, so half of what it is involved in is its own.
-    return _parts(agreement, contribution, 2 * contribution, n_labels, n_labels)
-
-
 def _parts(
     agreement: Agreement,
     contribution: FloatArray,
@@ -319,26 +342,42 @@ def _parts(
     )
 
 
-def _label_pairs(agreement: Agreement) -> Iterator[tuple[IntArray, IntArray, FloatArray]]:
+def _label_pairs(
+    agreement: Agreement,
+) -> Iterator[tuple[CodedLabels, IntArray, IntArray, IntArray, FloatArray]]:
     """Yield the pairs of labels of one item, with the part of both ordered pairs together.
 
     Labels are sorted by item, so the pairs are: each label with the next one, with the one after
     that, and so on for as long as both lie in one item.
+
+    Yields
+    ------
+    run : CodedLabels
+        Some of the labels.
+    first, second : int arrays of shape (n_pairs,)
+        Positions in them.
+    apart : int array of shape (n_apart,)
+        Which pairs are of different values; the others have no part.
+    part : float array of shape (n_apart,)
     """
-    labels, differences = agreement.labels, agreement.differences
-    per_item = labels.labels_per_item
-    last = np.cumsum(per_item)[labels.item_index]
-    first = np.arange(labels.n_labels)
-    size = per_item[labels.item_index]
-    step = 1
-    while True:
-        first = first[first + step < last[first]]
-        if first.size == 0:
-            return
-        second = first + step
-        delta = differences.between(labels.value_index[first], labels.value_index[second])
-        yield first, second, 2 * delta / (size[first] - 1) / agreement.n_pairable_labels
-        step += 1
+    differences, n = agreement.differences, agreement.n_pairable_labels
+    for run in agreement.labels.blocks():
+        item, value = run.item_index, run.value_index
+        others = np.bincount(item - item[0]) - 1
+        first = np.arange(run.n_labels)
+        step = 1
+        while True:
+            first = first[: np.searchsorted(first, run.n_labels - step)]
+            first = first[item[first] == item[first + step]]
+            if first.size == 0:
+                break
+            second = first + step
+            of_first, of_second = value[first], value[second]
+            apart = np.flatnonzero(of_first != of_second)
+            delta = differences.between(of_first[apart], of_second[apart])
+            part = 2 * delta / others[item[first[apart]] - item[0]] / n
+            yield run, first, second, apart, part
+            step += 1
 
 
 def _joined(

@@ -150,17 +150,37 @@ def no_ground(agreement: Agreement) -> str | None:
     if labels.coder_index is None:
         return NO_CODERS
     n_coders = max(1, labels.n_coders)
-    pairs = np.unique(labels.item_index.astype(np.int64) * n_coders + labels.coder_index)
-    coders_of_item = np.bincount(pairs // n_coders, minlength=labels.n_items)
-    sharing = coders_of_item[pairs // n_coders] >= 2
-    if np.unique(pairs[sharing] % n_coders).size < 3:
+    item, coder = _once_each(labels, n_coders)
+    coders_of_item = np.bincount(item, minlength=labels.n_items)
+    sharing = coders_of_item[item] >= 2
+    if np.count_nonzero(np.bincount(coder[sharing])) < 3:
         return TOO_FEW_CODERS
     if int(coders_of_item.max()) < 3:
         return NO_THIRD_LABEL
-    k = int(np.unique(labels.value_index).size)
+    k = int(np.count_nonzero(np.bincount(labels.value_index)))
     if k * max(labels.n_items, n_coders * k) > _LARGEST_TABLE:
         return TOO_LARGE
     return None
+
+
+def _once_each(labels: CodedLabels, n_coders: int) -> tuple[IntArray, IntArray]:
+    """Return the pairs of item and coder, each once."""
+    item, coder = labels.item_index, labels.coder_index
+    assert coder is not None
+    # Tables are read by item and coder, without repeats, so there is mostly nothing to be done.
+    if all(_ascending(run, n_coders) for run in labels.blocks()):
+        return item, coder
+    pair = item.astype(np.int64) * n_coders + coder
+    pair.sort()
+    again = np.concatenate([[False], pair[1:] == pair[:-1]])
+    return np.divmod(pair[~again], n_coders)
+
+
+def _ascending(labels: CodedLabels, n_coders: int) -> bool:
+    """Whether each label is of a later item than the last, or of the same by a later coder."""
+    assert labels.coder_index is not None
+    pair = labels.item_index.astype(np.int64) * n_coders + labels.coder_index
+    return bool((pair[1:] > pair[:-1]).all())
 
 
 def fit_coders(

@@ -105,3 +105,29 @@ def grouped_sums(group: IntArray, terms: FloatArray, n_groups: int) -> FloatArra
     high = np.bincount(group, weights=upper, minlength=n_groups)
     low = np.bincount(group, weights=terms - upper, minlength=n_groups)
     return np.asarray(high + low, dtype=np.float64)
+
+
+def numbered(keys: IntArray, limit: int) -> tuple[IntArray, IntArray, IntArray]:
+    """Number the distinct keys in ascending order, as `numpy.unique` does, without sorting if few.
+
+    Parameters
+    ----------
+    keys : int array of shape (n,), none negative
+    limit : int
+        Above every key.
+
+    Returns
+    -------
+    distinct : int array of shape (n_distinct,)
+        Ascending.
+    which : int array of shape (n,)
+        The position of each key in `distinct`.
+    often : int array of shape (n_distinct,)
+    """
+    if limit > max(4 * keys.size, 1 << 16):
+        return np.unique(keys, return_inverse=True, return_counts=True)
+    every = np.bincount(keys, minlength=1)
+    distinct = np.flatnonzero(every)
+    number = np.zeros(every.size, dtype=np.int64)
+    number[distinct] = np.arange(distinct.size)
+    return distinct, number[keys], every[distinct]

@@ -8,7 +8,7 @@ import numpy as np
 
 from relook.core.agreement import Agreement
 from relook.core.contributions import PairParts, coder_index, entry_parts, shares
-from relook.core.exact import FloatArray, IntArray, grouped_sums
+from relook.core.exact import FloatArray, IntArray, grouped_sums, numbered
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -73,9 +73,8 @@ def label_use(agreement: Agreement) -> Use:
     labels = agreement.labels
     pairable = labels.labels_per_item[labels.item_index] >= 2
     n_values = max(1, labels.n_values)
-    key, often = np.unique(
-        coder[pairable] * n_values + labels.value_index[pairable], return_counts=True
-    )
+    keys = coder[pairable].astype(np.int64) * n_values + labels.value_index[pairable]
+    key, _, often = numbered(keys, n_values * max(1, labels.n_coders))
     of_coder, value = np.divmod(key, n_values)
     return Use(of_coder, value, often)
 

@@ -12,8 +12,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from relook.core.exact import IntArray
+from relook.core.exact import IntArray, numbered
 from relook.core.labels import CodedLabels
+
+#: Floats add integers of so many bits without rounding; one is left for the sum.
+_EXACT_BITS = 52
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -138,6 +141,42 @@ def collapse(labels: CodedLabels) -> tuple[Profiles, IntArray]:
         -1 for an item without labels.
     """
     per_item = labels.labels_per_item
+    bits = int(per_item.max(initial=0)).bit_length()
+    if 0 < bits * labels.n_values <= _EXACT_BITS:
+        return _of_counts(labels, per_item, bits)
+    return _of_sorted(labels, per_item)
+
+
+def _of_counts(labels: CodedLabels, per_item: IntArray, bits: int) -> tuple[Profiles, IntArray]:
+    """Few values: the counts of an item's values side by side are one number, found by adding.
+
+    That needs no sorting of labels, and the numbers that occur are few.
+    """
+    shift = bits * np.arange(labels.n_values)
+    weight = np.ldexp(1.0, shift)
+    word = np.zeros(labels.n_items, dtype=np.int64)
+    for run in labels.blocks():
+        first, last = int(run.item_index[0]), int(run.item_index[-1])
+        word[first : last + 1] = np.bincount(
+            run.item_index - first, weights=weight[run.value_index]
+        )
+    distinct, which, often = numbered(word, 2 ** (bits * labels.n_values))
+    counts = (distinct[:, None] >> shift) & ((1 << bits) - 1)
+    # Of two profiles of one size, the first by sorted values has more of the first value in which
+    # they differ.
+    order = np.lexsort([*(-counts[:, ::-1].T), counts.sum(axis=1)])
+    if order.size and distinct[order[0]] == 0:  # items without labels are no profile
+        order = order[1:]
+    place = np.full(distinct.size, -1, dtype=np.int64)
+    place[order] = np.arange(order.size)
+    profile, value = np.nonzero(counts[order])
+    start = np.searchsorted(profile, np.arange(order.size + 1))
+    found = Profiles(value, counts[order][profile, value], start, often[order], labels.n_values)
+    return found, place[which]
+
+
+def _of_sorted(labels: CodedLabels, per_item: IntArray) -> tuple[Profiles, IntArray]:
+    """Any number of values: each item's labels sorted, and the rows that differ numbered."""
     first = np.concatenate([[0], np.cumsum(per_item)])
     profile_of_item = np.full(labels.n_items, -1, dtype=np.int64)
     values, counts, distinct, multiplicities = [], [], [], []

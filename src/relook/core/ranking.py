@@ -162,16 +162,18 @@ def rank_items(
         ranked &= priority > 0
     items = np.flatnonzero(ranked)
 
-    heaviest = np.argmax(np.where(disputed, weighted, -1.0), axis=0)[items]
-    pair_rank = _pair_ranks(variables, several, heaviest, items)
-    keys = [score[items]]
+    # Where nothing but its labels tells of an item, one item of each profile stands for all.
+    examples, stands_for = _examples(variables, priority, items)
+    heaviest = np.argmax(np.where(disputed, weighted, -1.0)[:, examples], axis=0)
+    pair_rank = _pair_ranks(variables, several, heaviest, examples)[stands_for]
+    keys = [score[examples]]
     if rank_by != "doubt":
-        keys += _doubt_keys(variables, several, disputed, items)
+        keys += _doubt_keys(variables, several, disputed, examples)
     else:
-        keys += _doubt_keys(variables, several, disputed, items)[1:]
+        keys += _doubt_keys(variables, several, disputed, examples)[1:]
     if rank_by != "intensity":
-        keys.append(intensity.sum(axis=0)[items])
-    block, tied = tied_blocks(keys)
+        keys.append(intensity.sum(axis=0)[examples])
+    block, tied = (each[stands_for] for each in tied_blocks(keys))
     carried = np.sum(
         [_kept(v, weights) for v, weights in zip(variables, weighted, strict=True)], axis=0
     )
@@ -198,6 +200,32 @@ def rank_items(
             [np.nan if d_o is None else d_o for d_o in observed], dtype=np.float64
         ),
     )
+
+
+def _examples(
+    variables: Sequence[RankedVariable], priority: FloatArray | None, items: IntArray
+) -> tuple[IntArray, IntArray]:
+    """Items that stand for all others in the order, and which of them stands for each item.
+
+    Parameters
+    ----------
+    items : int array of shape (n_ranked,)
+
+    Returns
+    -------
+    examples : int array of shape (n_examples,)
+    stands_for : int array of shape (n_ranked,)
+        Positions in `examples`.
+    """
+    only = variables[0]
+    if len(variables) > 1 or priority is not None or only.doubt is not None:
+        return items, np.arange(items.size)
+    profile = only.agreement.profile_of_item[items]
+    example = np.full(only.agreement.profiles.n_profiles, -1, dtype=np.int64)
+    example[profile] = items
+    used = np.flatnonzero(example >= 0)
+    place = np.cumsum(example >= 0) - 1
+    return example[used], place[profile]
 
 
 def _check(

@@ -46,8 +46,10 @@ def dealt_in_turn(block: IntArray, pair_rank: IntArray, item_hash: IntArray) -> 
     by_hash = np.argsort(item_hash, kind="stable")
     width = int(pair_rank.max(initial=0)) + 1
     group = block * width + pair_rank
+    # Few groups fit into 16 bits, which numpy sorts by counting.
+    group = group.astype(np.uint16) if int(group.max(initial=0)) < 2**16 else group
     by_group = by_hash[np.argsort(group[by_hash], kind="stable")]
-    begins = np.flatnonzero(np.diff(group[by_group], prepend=-1))
+    begins = np.flatnonzero(np.diff(group[by_group].astype(np.int64), prepend=-1))
     length = np.diff(np.append(begins, group.size))
     turn = np.empty(group.size, dtype=np.int64)
     turn[by_group] = np.arange(group.size) - np.repeat(begins, length)

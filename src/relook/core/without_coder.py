@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.contributions import coder_index, label_entries
+from relook.core.contributions import coder_entries
 from relook.core.exact import BoolArray, FloatArray, IntArray, quotients
 
 
@@ -52,18 +52,14 @@ def alpha_without_coder(agreement: Agreement) -> WithoutCoder:
     that label from the item, over m_u − 2 instead of m_u − 1. So only profiles are visited: the
     time is coders × profile entries, plus the labels.
     """
-    coder, labels = coder_index(agreement), agreement.labels
-    profiles = agreement.profiles
-    entry = label_entries(agreement)
+    labels, profiles = agreement.labels, agreement.profiles
+    given = coder_entries(agreement)
     pairable = profiles.size[profiles.profile_of_entry] >= 2
-    order = np.argsort(coder, kind="stable")
-    bounds = np.searchsorted(coder[order], np.arange(labels.n_coders + 1))
     alpha = np.full(labels.n_coders, np.nan)
     n_items = np.zeros(labels.n_coders, dtype=np.int64)
     n_labels = np.zeros(labels.n_coders, dtype=np.int64)
     for one in range(labels.n_coders):
-        of_coder = entry[order[bounds[one] : bounds[one + 1]]]
-        touched = np.bincount(of_coder, minlength=entry_count(agreement)) * pairable
+        touched = given[one] * pairable
         alpha[one], n_items[one], n_labels[one] = _without(agreement, touched, pairable)
     return WithoutCoder(alpha, n_items, n_labels)
 

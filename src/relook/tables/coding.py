@@ -58,27 +58,25 @@ def code_variable(variable: Variable, flat: Flat, context: Context) -> Coding | 
     )
     if coded is None:
         return None
-    code_of_text: IntArray = np.full(len(flat.texts), -1, dtype=np.int64)
+    code_of_text: IntArray = np.full(len(flat.texts), -1, dtype=np.int32)
     code_of_text[used] = coded.code_of_text
-    value: IntArray = code_of_text[flat.text]
     if coded.bad:
         bad = {int(used[at]): fault for at, fault in coded.bad.items()}
         for text, fault in bad.items():
             for where, more in _places_of(flat, text, context):
                 context.findings.add(fault.message + more, where, fault.mend)
-        good = value >= 0
-        flat, value = flat.take(good), value[good]
-    coder = np.zeros(flat.item.size, dtype=np.int64) if flat.coder is None else flat.coder
-    order = order_by_item_and_coder(flat.item, coder, len(context.coders))
-    flat, value = flat.take(order), value[order]
+        flat = flat.take(code_of_text[flat.text] >= 0)
+    coder = np.zeros(flat.item.size, dtype=np.int32) if flat.coder is None else flat.coder
+    flat = flat.take(order_by_item_and_coder(flat.item, coder, len(context.coders)))
+    value: IntArray = code_of_text[flat.text]
     if flat.coder is not None:
         keep = _single(variable, flat, value, context)
         if not keep.all():
             flat, value = flat.take(keep), value[keep]
     labels = CodedLabels(
-        flat.item.astype(np.int64, copy=False),
+        flat.item,
         value,
-        None if flat.coder is None else flat.coder.astype(np.int64, copy=False),
+        flat.coder,
         n_items=len(context.items),
         n_values=len(coded.texts),
         n_coders=len(context.coders),

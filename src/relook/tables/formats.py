@@ -11,7 +11,6 @@ from decimal import Decimal
 from typing import Any
 
 import numpy as np
-import pandas as pd
 
 from relook.cells.model import Book, Cell, Sheet
 from relook.errors import Place, Problem, RelookError, listed, nearest

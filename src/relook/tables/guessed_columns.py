@@ -24,6 +24,9 @@ from relook.tables.sketches import (
     named_like,
 )
 
+#: How many rows of a large table tell whether items meet a coder once: all rows of some items.
+_ROWS_LOOKED_AT = 1_000_000
+
 
 def guess_roles(
     tables: Sequence[Table], sketches: Sequence[list[Sketch]], told: Mapping[str, Any]
@@ -212,16 +215,14 @@ def _long_item(view: View, told: Mapping[str, Any], coder: Sketch | None, by_fil
     recurring = [one for one in named if one.n_distinct < len(one.codes)]
     if coder is not None:
         # Items meet a coder once: among the named ones, that which repeats pairs least.
-        recurring = [
-            one for one in recurring if _repeats(one.codes, coder.codes) < 0.2 * len(one.codes)
-        ]
+        recurring = [one for one in recurring if _rarely_repeats(one.codes, coder.codes)]
     if recurring:
         return recurring[0]
     spread = [
         one
         for one in candidates
         if one.n_distinct < len(one.codes)
-        and (coder is None or _repeats(one.codes, coder.codes) < 0.2 * len(one.codes))
+        and (coder is None or _rarely_repeats(one.codes, coder.codes))
     ]
     if spread:
         return max(spread, key=lambda one: one.n_distinct)
@@ -232,6 +233,14 @@ def _long_item(view: View, told: Mapping[str, Any], coder: Sketch | None, by_fil
         where=view.place,
         mend="name it with --item",
     )
+
+
+def _rarely_repeats(item: IntArray, coder: IntArray) -> bool:
+    """Whether few rows repeat an item and a coder, by the items that come first in the table."""
+    if item.size > _ROWS_LOOKED_AT:
+        among = item < int(item.max()) * _ROWS_LOOKED_AT // item.size + 1
+        item, coder = item[among], coder[among]
+    return _repeats(item, coder) < 0.2 * item.size
 
 
 def _repeats(first: IntArray, second: IntArray) -> int:

@@ -15,7 +15,7 @@ from relook.tables.guessed_columns import guess_roles
 from relook.tables.guessed_items import guess_items
 from relook.tables.guessed_roles import Roles
 from relook.tables.headers import fold
-from relook.tables.reading import Table, find_files, read_table
+from relook.tables.reading import Doing, Table, find_files, read_table, silently
 from relook.tables.schema import Duplicates, ItemSource, LabelSource, Layout, Variable
 from relook.tables.sketches import CODER_WORDS, MISSING_MARKS, Sketch, sketch
 
@@ -116,6 +116,8 @@ class Guess:
         The same guesses in parts.
     unused : tuple of str
         Files that were given and are of no use here.
+    tables : dict of Path to Table
+        What was read on the way, by whole path; a large table need not be read again.
     """
 
     source: LabelSource
@@ -124,10 +126,14 @@ class Guess:
     said: tuple[str, ...]
     guesses: tuple[Guessed, ...] = ()
     unused: tuple[str, ...] = ()
+    tables: dict[Path, Table] = field(default_factory=dict)
 
 
 def guess(
-    paths: Sequence[Path | str], overrides: Overrides | None = None, root: Path | None = None
+    paths: Sequence[Path | str],
+    overrides: Overrides | None = None,
+    root: Path | None = None,
+    doing: Doing = silently,
 ) -> Guess:
     """Guess what label tables mean.
 
@@ -138,6 +144,8 @@ def guess(
     overrides : Overrides, optional
     root : Path, optional
         The folder that paths are relative to; the current one where left out.
+    doing : callable, optional
+        Told what is being done, in words for the user.
 
     Returns
     -------
@@ -156,6 +164,7 @@ def guess(
     tables: list[Table] = []
     for path in files:
         is_items = path in told.items
+        doing(f"reading {path}")
         tables.append(
             read_table(
                 path,
@@ -172,6 +181,7 @@ def guess(
                 where=tables[-1].place,
                 mend="give a table with labels",
             )
+    doing("looking at the columns")
     named = {Path(path) for path in told.items}
     labelled, others = _label_tables(
         [at for at, path in enumerate(files) if path not in named], tables
@@ -209,7 +219,13 @@ def guess(
     unused = tuple(tables[at].file for at in others if files[at] not in used)
     said = [table.said for table in tables] + [str(line) for line in lines]
     said += [f"{file}: not used, no column holds the items' ids" for file in unused]
-    return Guess(source, variables, items, tuple(said), tuple(lines), unused)
+    read = {
+        (root / path).resolve(): table.without_cells()
+        for path, table in zip(files, tables, strict=True)
+        # In a workbook the settings may mean another sheet than the one that was looked at.
+        if table.sheet is None
+    }
+    return Guess(source, variables, items, tuple(said), tuple(lines), unused, read)
 
 
 def told_roles(told: Overrides) -> dict[str, object]:

@@ -46,8 +46,8 @@ class Flat:
             self.item[chosen],
             None if self.coder is None else self.coder[chosen],
             self.text[chosen],
-            self.file[chosen],
-            self.column[chosen],
+            _taken(self.file, chosen),
+            _taken(self.column, chosen),
             self.row[chosen],
             None if self.remark is None else self.remark[chosen],
             self.texts,
@@ -103,8 +103,8 @@ def _flat(pieces: Sequence[tuple[int, Part, IntArray, IntArray | None]]) -> Flat
         _end_to_end([item for _, _, item, _ in pieces]),
         None if len(coders) < len(pieces) else _end_to_end(coders),
         _end_to_end(text_codes),
-        _end_to_end([np.full(part.rows.size, file, np.int32) for file, part, _, _ in pieces]),
-        _end_to_end([np.full(part.rows.size, part.column, np.int32) for _, part, _, _ in pieces]),
+        _end_to_end([_same(file, part.rows.size) for file, part, _, _ in pieces]),
+        _end_to_end([_same(part.column, part.rows.size) for _, part, _, _ in pieces]),
         _end_to_end([part.rows for _, part, _, _ in pieces]),
         np.concatenate(remarks) if any_remarks else None,
         texts,
@@ -142,11 +142,28 @@ def order_by_item_and_coder(item: IntArray, coder: IntArray, n_coders: int) -> I
     widest = (int(item.max(initial=0)) + 1) * max(1, n_coders)
     if widest < 2 ** (62 - bits):
         # The position in the low bits makes one plain sort of integers stable.
-        word = item.astype(np.int64) * max(1, n_coders) + coder
-        word = (word << bits) | np.arange(n)
+        word = item.astype(np.int64)
+        word *= max(1, n_coders)
+        word += coder
+        word <<= bits
+        word |= np.arange(n)
         word.sort()
-        return np.asarray(word & ((1 << bits) - 1))
+        word &= (1 << bits) - 1
+        return word
     return np.lexsort((coder, item))
+
+
+def _same(number: int, n: int) -> IntArray:
+    """One number n times over, held once: most tables come from one file, one column of labels."""
+    return np.broadcast_to(np.int32(number), n)
+
+
+def _taken(numbers: IntArray, chosen: IntArray | BoolArray) -> IntArray:
+    """The chosen numbers; one that is held once stays so."""
+    if numbers.strides != (0,) or numbers.size == 0:
+        return numbers[chosen]
+    n = int(np.count_nonzero(chosen)) if chosen.dtype == np.bool_ else chosen.size
+    return np.broadcast_to(numbers[0], n)
 
 
 def _end_to_end(arrays: Sequence[IntArray]) -> IntArray:

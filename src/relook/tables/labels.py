@@ -18,7 +18,7 @@ from relook.tables.coding import Coding, Context, code_variable
 from relook.tables.findings import Findings
 from relook.tables.joining import Flat, Joined, join
 from relook.tables.layouts import FileParts, take_apart, wanted_columns
-from relook.tables.reading import Table, Texts, find_files, read_table
+from relook.tables.reading import Table, Texts, display_name, find_files, read_table
 from relook.tables.schema import LabelSource, Variable
 
 
@@ -104,7 +104,12 @@ class LabelData:
         return Place(self.files[file], self.sheets[file], int(found.rows[label]), column)
 
 
-def read_labels(source: LabelSource, variables: Sequence[Variable], root: Path) -> LabelData:
+def read_labels(
+    source: LabelSource,
+    variables: Sequence[Variable],
+    root: Path,
+    known: dict[Path, Table] | None = None,
+) -> LabelData:
     """Read all label tables of a project.
 
     Parameters
@@ -114,6 +119,8 @@ def read_labels(source: LabelSource, variables: Sequence[Variable], root: Path) 
         At least one.
     root : Path
         The folder that paths are relative to.
+    known : dict of Path to Table, optional
+        Tables that were read already, by whole path; those that are used are taken out of it.
 
     Returns
     -------
@@ -124,7 +131,7 @@ def read_labels(source: LabelSource, variables: Sequence[Variable], root: Path) 
     RelookError
         With every error found in any of the files as its `problems`.
     """
-    data, findings = survey_labels(source, variables, root)
+    data, findings = survey_labels(source, variables, root, known)
     if data is None or findings.any_errors:
         findings.raise_errors()
     assert data is not None
@@ -132,7 +139,10 @@ def read_labels(source: LabelSource, variables: Sequence[Variable], root: Path) 
 
 
 def survey_labels(
-    source: LabelSource, variables: Sequence[Variable], root: Path
+    source: LabelSource,
+    variables: Sequence[Variable],
+    root: Path,
+    known: dict[Path, Table] | None = None,
 ) -> tuple[LabelData | None, Findings]:
     """Read all that can be read, errors or not, for a check that wants to see everything.
 
@@ -146,7 +156,7 @@ def survey_labels(
     if not variables:
         raise RelookError("no variable is named", mend="name the column that holds the labels")
     findings = Findings()
-    tables, parts = _read_files(source, variables, root, findings)
+    tables, parts = _read_files(source, variables, root, {} if known is None else known, findings)
     joined = join(parts, [variable.name for variable in variables])
     joined, left_out = _leave_out(joined, source, findings)
     context = Context(tables, joined.items, joined.coders, source.duplicates, findings)
@@ -187,7 +197,11 @@ def survey_labels(
 
 
 def _read_files(
-    source: LabelSource, variables: Sequence[Variable], root: Path, findings: Findings
+    source: LabelSource,
+    variables: Sequence[Variable],
+    root: Path,
+    known: dict[Path, Table],
+    findings: Findings,
 ) -> tuple[list[Table], list[FileParts]]:
     files = findings.attempt(lambda: find_files(source.files, root)) or ()
     wanted = wanted_columns(source, variables)
@@ -195,13 +209,19 @@ def _read_files(
     parts: list[FileParts] = []
     for path in files:
         try:
-            table = read_table(
-                path,
-                root,
-                sheet=source.sheet,
-                delimiter=source.delimiter,
-                encoding=source.encoding,
-                wanted=wanted,
+            # Taken and not kept, so that its memory is free once the labels are coded.
+            held = known.pop((root / path).resolve(), None)
+            table = (
+                held.named(display_name(path, root))
+                if held is not None
+                else read_table(
+                    path,
+                    root,
+                    sheet=source.sheet,
+                    delimiter=source.delimiter,
+                    encoding=source.encoding,
+                    wanted=wanted,
+                )
             )
             parts.append(take_apart(table, source, variables, findings))
             tables.append(table)

@@ -121,7 +121,7 @@ def blank_texts(texts: Texts) -> BoolArray:
     """Return which texts are empty or spaces."""
     # A map runs without a step of the interpreter per text; ids can be millions.
     spaces = np.fromiter(map(str.isspace, texts), dtype=bool, count=len(texts))
-    return spaces | np.asarray(texts == "", dtype=bool)
+    return np.asarray(spaces | (texts == ""), dtype=bool)
 
 
 def _find_others(

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import glob
 import hashlib
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, field, replace
 from pathlib import Path
@@ -27,6 +27,8 @@ from relook.tables.formats import CellFault, read_json_lines, read_parquet, read
 from relook.tables.headers import find_column
 
 Texts = npt.NDArray[np.object_]
+#: Told what is being done, in words for the user, before what may take long.
+Doing = Callable[[str], None]
 #: What workbooks begin with: a zip archive, or the container of old and of encrypted ones.
 _BOOKS = (b"PK", b"\xd0\xcf\x11\xe0")
 _JSON_LINES = {".jsonl", ".ndjson"}
@@ -81,7 +83,7 @@ class Table:
     @property
     def n_rows(self) -> int:
         """Rows that are not blank, the header left out."""
-        return len(self.frame)
+        return int(self.rows.size)
 
     @property
     def place(self) -> Place:
@@ -96,6 +98,11 @@ class Table:
     def find(self, name: str, role: str = "") -> int:
         """Return the 0-based position of a column; see `find_column`."""
         return find_column(self.header, name, self.place, role)
+
+    def named(self, file: str) -> Table:
+        """Return the same table under another name of its file, as seen from another folder."""
+        said = f"{file}{self.said.removeprefix(self.file)}"
+        return replace(self, file=file, said=said)
 
     def coded(self, column: int) -> tuple[IntArray, Texts]:
         """Return a column as codes into its distinct texts, in order of first appearance.
@@ -118,7 +125,16 @@ class Table:
 
     def texts(self, column: int) -> Texts:
         """Return the texts of a column, shape (n_rows,)."""
+        if column in self.known:
+            codes, texts = self.known[column]
+            return np.asarray(texts[codes])
         return self.frame[column].to_numpy(dtype=object)
+
+    def without_cells(self) -> Table:
+        """Return the table with every column as codes alone, which take a fraction of the room."""
+        for column in range(len(self.header)):
+            self.coded(column)
+        return replace(self, frame=self.frame.iloc[:, :0])
 
 
 def read_table(
@@ -281,6 +297,10 @@ def read_bytes(path: Path, name: str) -> bytes:
         ) from None
     except (OSError, ValueError) as fault:
         raise RelookError(f"the file cannot be read ({fault})", where=Place(name)) from None
+
+
+def silently(text: str) -> None:
+    """Tell nobody what is being done."""
 
 
 def display_name(path: Path, root: Path | None) -> str:

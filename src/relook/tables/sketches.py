@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -220,23 +221,32 @@ class Sketch:
         ----------
         groups : int array of shape (n_rows,)
         """
-        n_groups = int(groups.max(initial=-1)) + 1
-        some_row = np.full(n_groups, -1, dtype=np.int64)
-        # Whichever row of a group is written last, the others must agree with it.
-        some_row[groups] = self.codes
-        several = np.count_nonzero(some_row >= 0) < groups.size
-        return several and bool((some_row[groups] == self.codes).all())
+        head = slice(0, 100_000)
+        if groups.size > head.stop and not _agree(groups[head], self.codes[head]):
+            return False  # as it mostly is, and then no more need be read
+        return _agree(groups, self.codes) and np.unique(groups).size < groups.size
+
+
+def _agree(groups: IntArray, codes: IntArray) -> bool:
+    """Whether rows of one group always have the same code."""
+    some_row = np.zeros(int(groups.max(initial=-1)) + 1, dtype=np.int64)
+    # Whichever row of a group is written last, the others must agree with it.
+    some_row[groups] = codes
+    return bool((some_row[groups] == codes).all())
 
 
 def sketch(table: Table) -> list[Sketch]:
     """Return a sketch of each column that has a header."""
-    found = []
-    for at, header in enumerate(table.header):
-        if header.strip():
-            codes, texts = table.coded(at)
-            counts = np.bincount(codes, minlength=len(texts))
-            found.append(Sketch(at, header, codes, texts, counts))
-    return found
+    columns = [at for at, header in enumerate(table.header) if header.strip()]
+
+    def of_column(at: int) -> Sketch:
+        codes, texts = table.coded(at)
+        counts = np.bincount(codes, minlength=len(texts))
+        return Sketch(at, table.header[at], codes, texts, counts)
+
+    # Coding a column leaves the interpreter free, and one of ids takes as long as all others.
+    with ThreadPoolExecutor(2) as both:
+        return list(both.map(of_column, columns))
 
 
 def named_like(sketches: list[Sketch], words: frozenset[str]) -> list[Sketch]:

@@ -109,14 +109,16 @@ def queue(
             reissue=reissue,
             reissue_to=to,
         )
-        done = run_queue(
-            project,
-            request,
-            stamp=terminal.now().isoformat(timespec="seconds"),
-            new_project=is_new,
-            dry_run=dry_run,
-            force=force,
-        )
+        with terminal.doing() as doing:
+            done = run_queue(
+                project,
+                request,
+                stamp=terminal.now().isoformat(timespec="seconds"),
+                new_project=is_new,
+                dry_run=dry_run,
+                force=force,
+                doing=doing,
+            )
         for line in done.loaded.said:
             terminal.say(line)
         terminal.problems(done.loaded.problems)

@@ -99,7 +99,8 @@ def score(
         }
         queue = settings_of_queue(project.settings.queue, overrides)
         if coding is None or coding == FIRST_CODING:
-            loaded = load(project, only=variable)
+            with terminal.doing() as doing:
+                loaded = load(project, only=variable, doing=doing)
         else:
             if not project.settings.project:
                 raise RelookError("a bare table has one coding alone", mend="name a project folder")
@@ -107,13 +108,15 @@ def score(
         for line in loaded.said:
             terminal.say(line)
         terminal.problems(loaded.problems)
-        scored = scoring.score(
-            loaded,
-            queue,
-            seed=DEFAULT_SEED if seed is None else seed,
-            with_doubt=items is not None,
-            merge=groups,
-        )
+        with terminal.doing() as doing:
+            scored = scoring.score(
+                loaded,
+                queue,
+                seed=DEFAULT_SEED if seed is None else seed,
+                with_doubt=items is not None,
+                merge=groups,
+                doing=doing,
+            )
         if scored.changed_files:
             terminal.warn(changed_warning(scored.changed_files))
         if items is not None:

@@ -315,10 +315,8 @@ def _changes(
     assert labels.coder_index is not None  # counts were refused
     found = []
     for at, entry in enumerate(changed.itertuples(index=False)):
-        begin, end = np.searchsorted(labels.item_index, [items[at], items[at] + 1])
-        others = labels.value_index[begin:end][
-            labels.coder_index[begin:end] != coder_of[str(entry.coder)]
-        ]
+        own = labels.of_item(int(items[at]))
+        others = labels.value_index[own][labels.coder_index[own] != coder_of[str(entry.coder)]]
         old, new = int(str(entry.old)), int(str(entry.new))
         found.append(
             Change(

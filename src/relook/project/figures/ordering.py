@@ -20,6 +20,7 @@ from relook.project.figures.consensus_texts import consensus_for
 from relook.project.setup.loading import Loaded, item_texts
 from relook.project.setup.settings import QueueSettings, Settings
 from relook.tables.numbers import parse_number
+from relook.tables.reading import Doing, silently
 from relook.tables.schema import Variable
 
 #: The seed where none is given: fixed, so that the same command gives the same result.
@@ -61,6 +62,7 @@ def order_items(
     leave_out: Mapping[str, BoolArray] | None = None,
     n_audit_items: int = 0,
     overlap: float = 0.0,
+    doing: Doing = silently,
 ) -> Ordering:
     """Rank the disputed items and take the head that the settings ask for.
 
@@ -77,6 +79,8 @@ def order_items(
     n_audit_items : int
     overlap : float
         Share of the rows that a second adjudicator gets too.
+    doing : callable, optional
+        Told what is being done, in words for the user.
 
     Raises
     ------
@@ -84,6 +88,7 @@ def order_items(
         An order by doubt that no variable has ground for, with the reason of each.
     """
     by_doubt = queue.rank_by == "doubt"
+    doing("estimating doubt")
     doubts = doubts_of(loaded, every=by_doubt or with_doubt)
     if by_doubt:
         _refuse_order_by_doubt(doubts)
@@ -96,6 +101,7 @@ def order_items(
         )
         for name, agreement in loaded.agreements.items()
     ]
+    doing("ranking items")
     priority = priorities(loaded)
     rank_by: RankBy = queue.rank_by
     ranking = rank_items(variables, item_hashes(loaded, seed), rank_by=rank_by, priority=priority)

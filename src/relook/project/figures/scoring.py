@@ -39,6 +39,7 @@ from relook.project.figures.ordering import Ordering, groups_of, order_items, ov
 from relook.project.setup.loading import Loaded
 from relook.project.setup.settings import QueueSettings
 from relook.tables.labels import VariableLabels
+from relook.tables.reading import Doing, silently
 
 #: The conventional bar: alpha at which data may be relied on (Krippendorff 2004, p. 241).
 CUSTOMARY_ALPHA = 0.8
@@ -181,6 +182,7 @@ def score(
     merge: Sequence[MergeGroup] = (),
     resamples: int = RESAMPLES,
     confidence_level: float = CONFIDENCE_LEVEL,
+    doing: Doing = silently,
 ) -> Score:
     """Compute the figures of a project.
 
@@ -199,6 +201,8 @@ def score(
         Labels to be taken as one, beside the labels as they are.
     resamples : int
     confidence_level : float
+    doing : callable, optional
+        Told what is being done, in words for the user.
 
     Raises
     ------
@@ -214,7 +218,9 @@ def score(
             with_doubt=with_doubt,
             n_audit_items=queue.audit,
             overlap=overlap_of(loaded.project.settings),
+            doing=doing,
         )
+    doing("resampling items, and taking the disagreement apart")
     variables = tuple(
         _score_variable(loaded, name, position, ordering, seed, resamples, confidence_level)
         for position, name in enumerate(loaded.agreements)

@@ -18,6 +18,7 @@ from relook.project.sending.queueing import PlannedRound, QueueRequest, plan_rou
 from relook.project.setup.folder import Project
 from relook.project.setup.guessed import folder_for, write_settings
 from relook.project.setup.loading import Loaded, load
+from relook.tables.reading import Doing, silently
 from relook.worksheet.overview import write_overview
 
 Row = dict[str, Any]
@@ -55,6 +56,7 @@ def run_queue(
     new_project: bool = False,
     dry_run: bool = False,
     force: bool = False,
+    doing: Doing = silently,
 ) -> QueueRun:
     """Plan a round and write it.
 
@@ -70,6 +72,8 @@ def run_queue(
         Plan, and write nothing.
     force : bool
         Replace files that exist.
+    doing : callable, optional
+        Told what is being done, in words for the user.
 
     Raises
     ------
@@ -78,8 +82,11 @@ def run_queue(
     """
     if new_project and not dry_run:
         with folder_for(project) as made:
-            return _write(load(made), request, stamp, new_project=True, force=force)
-    loaded = load(project)
+            loaded = load(made, doing=doing)
+            doing("ranking items and planning the round")
+            return _write(loaded, request, stamp, new_project=True, force=force)
+    loaded = load(project, doing=doing)
+    doing("ranking items and planning the round")
     if dry_run:  # a rehearsal leaves no trace, not even a secret
         return _plan(loaded, request, project.secret_or_new(), stamp, dry_run=True)
     return _write(loaded, request, stamp, new_project=False, force=force)

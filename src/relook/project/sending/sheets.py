@@ -5,8 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-import numpy as np
-
 from relook.core.agreement import Agreement
 from relook.project.setup.loading import Loaded, labels_of_item, shown_texts
 from relook.tables.code_book import read_code_book
@@ -154,6 +152,6 @@ def coders_of_item(loaded: Loaded, item: int) -> frozenset[str]:
         codes = held.labels
         if codes.coder_index is None:
             continue
-        begin, end = np.searchsorted(codes.item_index, [item, item + 1])
-        found.update(loaded.labels.coders[coder] for coder in codes.coder_index[begin:end])
+        own = codes.coder_index[codes.of_item(item)]
+        found.update(loaded.labels.coders[coder] for coder in own)
     return frozenset(found)

@@ -7,14 +7,17 @@ import os
 import secrets
 import tempfile
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from pathlib import Path
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 import filelock
 
 from relook.errors import Place, RelookError
 from relook.project.setup.settings import SETTINGS_FILE, Settings, load_settings
+
+if TYPE_CHECKING:  # opening a folder needs no pandas
+    from relook.tables.reading import Table
 
 _LOCK_SECONDS = 20
 #: What goes out and comes back: rounds of second looks, or codings, each with fresh labels.
@@ -33,11 +36,14 @@ class Project:
     area : {"rounds", "codings"}
         Which part of the folder the properties below speak of. Coding sheets go out, come back and
         are recorded as worksheets are, one coding in the place of one round.
+    tables : dict of Path to Table
+        Tables that were read while the settings were guessed, by whole path.
     """
 
     root: Path
     settings: Settings
     area: Area = "rounds"
+    tables: dict[Path, Table] = field(default_factory=dict, compare=False, repr=False)
 
     @classmethod
     def open(cls, root: Path) -> Project:

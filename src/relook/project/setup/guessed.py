@@ -14,6 +14,7 @@ from relook.project.setup.folder import Project, write_whole
 from relook.project.setup.settings import SETTINGS_FILE, Settings
 from relook.project.setup.settings_text import settings_toml
 from relook.tables.guessing import Guess, Overrides, guess
+from relook.tables.reading import Doing, silently
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,7 +37,9 @@ class GuessedProject:
         return self.guess.said
 
 
-def guessed_project(tables: Sequence[Path], overrides: Overrides | None = None) -> GuessedProject:
+def guessed_project(
+    tables: Sequence[Path], overrides: Overrides | None = None, doing: Doing = silently
+) -> GuessedProject:
     """Guess a project from label tables and, among them, item tables.
 
     Parameters
@@ -44,6 +47,8 @@ def guessed_project(tables: Sequence[Path], overrides: Overrides | None = None) 
     tables : sequence of Path
         At least one.
     overrides : Overrides, optional
+    doing : callable, optional
+        Told what is being done, in words for the user.
 
     Raises
     ------
@@ -51,9 +56,9 @@ def guessed_project(tables: Sequence[Path], overrides: Overrides | None = None) 
         Tables that cannot be read, or whose layout cannot be told.
     """
     root = Path.cwd()
-    held = guess(tables, overrides, root)
+    held = guess(tables, overrides, root, doing)
     settings = Settings(project="", labels=held.source, variables=held.variables, items=held.items)
-    return GuessedProject(Project(root, settings), held)
+    return GuessedProject(Project(root, settings, tables=held.tables), held)
 
 
 def folder_beside(table: Path) -> Path:
@@ -91,7 +96,7 @@ def in_folder(project: Project, folder: Path) -> Project:
     path leads through a folder that is not there.
     """
     folder = folder.absolute()
-    return Project(folder, settings_for_folder(project, folder))
+    return Project(folder, settings_for_folder(project, folder), tables=project.tables)
 
 
 def write_settings(project: Project, *, force: bool = False) -> None:
@@ -138,7 +143,7 @@ def folder_for(project: Project) -> Iterator[Project]:
             mend="check that you may write there",
         ) from None
     try:
-        yield Project(project.root, settings_for_folder(project, project.root))
+        yield replace(project, settings=settings_for_folder(project, project.root))
     except BaseException:
         if made:
             with contextlib.suppress(OSError):  # not empty: something was written after all

@@ -5,11 +5,11 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from pathlib import Path
 
 import numpy as np
 import numpy.typing as npt
-import pandas as pd
 
 from relook.core.agreement import Agreement, measure_agreement
 from relook.core.differences import difference_function
@@ -19,12 +19,16 @@ from relook.project.setup.folder import Project
 from relook.project.setup.settings import SETTINGS_FILE
 from relook.tables.items import ItemData, read_items
 from relook.tables.labels import LabelData, VariableLabels, read_labels
+from relook.tables.reading import Doing, silently
 from relook.tables.schema import Variable
 
 Texts = npt.NDArray[np.object_]
+#: Distinct labels beyond which functions that compare every two of them are refused: at this number
+#: D_e takes 400 million differences.
+MOST_COMPARED = 20_000
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Loaded:
     """A project with its labels and items.
 
@@ -54,10 +58,16 @@ class Loaded:
 
     def item_numbers(self, items: Sequence[str]) -> IntArray:
         """Return the index of each item's id, -1 for those without an entry in the label table."""
-        return pd.Index(self.labels.items).get_indexer(pd.Index(list(items), dtype=object))
+        number = self._number_of_item
+        return np.array([number.get(item, -1) for item in items], dtype=np.int64)
+
+    @cached_property
+    def _number_of_item(self) -> dict[str, int]:
+        """The index of each item's id; asked for row by row, so made once."""
+        return {item: at for at, item in enumerate(self.labels.items.tolist())}
 
 
-def load(project: Project, *, only: Sequence[str] | None = None) -> Loaded:
+def load(project: Project, *, only: Sequence[str] | None = None, doing: Doing = silently) -> Loaded:
     """Read a project's tables and measure agreement on each variable.
 
     Parameters
@@ -65,6 +75,8 @@ def load(project: Project, *, only: Sequence[str] | None = None) -> Loaded:
     project : Project
     only : sequence of str, optional
         Names of the variables to measure; all of them where left out.
+    doing : callable, optional
+        Told what is being done, in words for the user.
 
     Raises
     ------
@@ -76,16 +88,33 @@ def load(project: Project, *, only: Sequence[str] | None = None) -> Loaded:
     variables = [
         variable for variable in settings.variables if wanted is None or variable.name in wanted
     ]
-    labels = read_labels(settings.labels, variables, project.root)
+    doing("reading the labels")
+    labels = read_labels(settings.labels, variables, project.root, project.tables)
     items = read_items(settings.items, project.root) if settings.items is not None else None
+    doing("grouping items by their labels")
     agreements = {name: measure(held) for name, held in labels.variables.items()}
     return Loaded(project, labels, items, agreements)
 
 
 def measure(held: VariableLabels) -> Agreement:
-    """Measure agreement on one variable's labels."""
+    """Measure agreement on one variable's labels.
+
+    Raises
+    ------
+    RelookError
+        Too many distinct labels for a function that compares every two of them.
+    """
     variable: Variable = held.variable
     function = difference_function(variable.difference, variable.options)
+    if function.compares_every_two and held.values.n_values > MOST_COMPARED:
+        numbers = function.needs == "number"
+        raise RelookError(
+            f'"{variable.name}" has {held.values.n_values:,} distinct labels; {function.name} '
+            f"differences compare every two of them, which is done up to {MOST_COMPARED:,}",
+            mend="round the numbers, or take interval differences"
+            if numbers
+            else "take labels that recur, or nominal differences",
+        )
     return measure_agreement(held.labels, function, held.values, tolerance=variable.tolerance)
 
 
@@ -134,13 +163,13 @@ def labels_of_item(loaded: Loaded, variable: str, item: int) -> list[tuple[str, 
     """Return (coder, label) of one item, by coder; coders are "" in a table of counts."""
     held = loaded.labels.variables[variable]
     codes = held.labels
-    begin, end = np.searchsorted(codes.item_index, [item, item + 1])
+    own = codes.of_item(item)
+    texts = [held.texts[value] for value in codes.value_index[own]]
     coders = (
-        [""] * (end - begin)
+        [""] * len(texts)
         if codes.coder_index is None
-        else [loaded.labels.coders[coder] for coder in codes.coder_index[begin:end]]
+        else [loaded.labels.coders[coder] for coder in codes.coder_index[own]]
     )
-    texts = [held.texts[value] for value in codes.value_index[begin:end]]
     return sorted(zip(coders, texts, strict=True))
 
 
