@@ -2,7 +2,7 @@
 
 General layout, each layer importing only what stands to its right:
 
-    cli → frames → project → (tables, worksheet) → cells → core → errors
+    cli → (frames, engines) → project → (tables, worksheet) → cells → core → errors
 
 core       the arithmetic: agreement, contributions, ranking; numpy only
 tables     label, item and code-book tables in; result tables out
@@ -10,6 +10,7 @@ worksheet  the spreadsheets: written, and read back as people return them
 cells      spreadsheet files as typed cells, and text made safe for a cell
 project    a folder's settings, rounds and record of decisions, and what is done with them
 frames     the Python interface, which the names below make up: DataFrames in and out
+engines    labels in parts, on several processes or machines
 cli        commands; the only place that prints and exits
 """
 

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from relook.core.labels import CodedLabels
-from relook.core.profiles import Profiles, collapse
+from relook.core.profiles import Profiles, collapse, merge
 
 
 def labels_of(rows, n_values=None, n_items=None):
@@ -61,7 +61,16 @@ def test_merging_two_parts_is_the_whole():
     whole, _ = collapse(labels_of(rows, 4))
     one, _ = collapse(labels_of(rows[:30], 4))
     other, _ = collapse(labels_of(rows[30:], 4))
-    for merged in (one.merged_with(other), other.merged_with(one)):
+    for parts in ([one, other], [other, one]):
+        merged, places = merge(parts, 4)
+        for part, place in zip(parts, places, strict=True):
+            assert merged.size[place].tolist() == part.size.tolist()
+            for own, at in enumerate(place.tolist()):
+                held = [
+                    profiles.value_index[profiles.start[p] : profiles.start[p + 1]].tolist()
+                    for profiles, p in ((merged, at), (part, own))
+                ]
+                assert held[0] == held[1]
         for name in ("value_index", "count", "start", "multiplicity"):
             assert getattr(merged, name).tolist() == getattr(whole, name).tolist()
 
@@ -70,8 +79,8 @@ def test_merging_with_nothing_changes_nothing():
     """An empty part adds nothing."""
     some, _ = collapse(labels_of([[0, 1], [1]], 2))
     none, _ = collapse(labels_of([], 2))
-    assert written_out(some.merged_with(none)) == written_out(some)
-    assert none.merged_with(none).n_profiles == 0
+    assert written_out(merge([some, none], 2)[0]) == written_out(some)
+    assert merge([none, none], 2)[0].n_profiles == 0
 
 
 def test_marginals_count_pairable_labels_only():

@@ -16,7 +16,9 @@ PROJECT = sorted(
 )
 
 
-@pytest.mark.parametrize("name", ["core", "cells", "tables", "worksheet", "frames", *PROJECT])
+@pytest.mark.parametrize(
+    "name", ["core", "cells", "tables", "worksheet", "frames", "engines", *PROJECT]
+)
 def test_each_package_says_what_its_modules_are(name):
     """A newcomer finds every file of a package in its docstring."""
     folder = PACKAGE / name
@@ -46,4 +48,4 @@ def test_the_project_names_its_packages_in_the_order_of_their_imports():
 def test_the_layers_stand_at_the_top_of_the_package():
     """The package opens with the direction of its imports."""
     text = (PACKAGE / "__init__.py").read_text(encoding="utf-8")
-    assert "cli → frames → project → (tables, worksheet) → cells → core → errors" in text
+    assert "cli → (frames, engines) → project → (tables, worksheet) → cells → core → errors" in text

@@ -26,7 +26,7 @@ from relook.core.differences import (
     Values,
     difference_function,
 )
-from relook.core.profiles import collapse
+from relook.core.profiles import collapse, merge
 
 FEW = settings(max_examples=25, deadline=None)
 
@@ -223,7 +223,7 @@ def test_profiles_of_two_parts_merge_to_the_whole(case, table, cut):
         collapse(coded(dict(part), range(N_VALUES)).labels)[0]
         for part in (rows, rows[:cut], rows[cut:])
     )
-    merged = first.merged_with(second)
+    merged, _ = merge([first, second], max(first.n_values, second.n_values))
     for name in ("value_index", "count", "start", "multiplicity"):
         assert getattr(merged, name).tolist() == getattr(whole, name).tolist()
 

@@ -49,6 +49,30 @@ DryRunOption = Annotated[
     bool, typer.Option("--dry-run", help="Say what would be written, and write nothing.")
 ]
 ForceOption = Annotated[bool, typer.Option("--force", help="Replace files that exist already.")]
+EngineOption = Annotated[
+    str | None,
+    typer.Option(
+        "--engine",
+        metavar="NAME",
+        help="dask: labels in several files are read and summed up by several processes or "
+        "machines.",
+    ),
+]
+SchedulerOption = Annotated[
+    str | None,
+    typer.Option(
+        "--scheduler",
+        metavar="ADDRESS",
+        help="With --engine dask: a running scheduler; left out, a cluster on this machine.",
+    ),
+]
+ByItemOption = Annotated[
+    bool,
+    typer.Option(
+        "--by-item",
+        help="With --engine dask: each item's labels are all in one file, so nothing is shuffled.",
+    ),
+]
 TopOption = Annotated[
     int | None, typer.Option("--top", min=1, metavar="N", help="Send at most N disputed items.")
 ]

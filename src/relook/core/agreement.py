@@ -133,6 +133,18 @@ def measure_agreement(
     """
     values = Values(labels.n_values) if values is None else values
     profiles, profile_of_item = collapse(labels)
+    return measure_profiles(labels, profiles, profile_of_item, function, values, tolerance)
+
+
+def measure_profiles(
+    labels: CodedLabels,
+    profiles: Profiles,
+    profile_of_item: IntArray,
+    function: DifferenceFunction,
+    values: Values,
+    tolerance: Fraction | int,
+) -> Agreement:
+    """Compute the same from label profiles that are known already; `labels` is only handed on."""
     marginals = profiles.pairable_marginals()
     differences = function.bind(values, marginals)
     pairable = profiles.size >= 2

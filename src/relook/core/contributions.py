@@ -33,6 +33,7 @@ from relook.core.exact import (
     widened,
 )
 from relook.core.labels import CodedLabels
+from relook.core.summed import SummedAgreement
 from relook.core.ties import tie_levels
 from relook.errors import RelookError
 
@@ -169,6 +170,8 @@ def coder_entries(agreement: Agreement) -> IntArray:
     RelookError
         The labels carry no coders.
     """
+    if isinstance(agreement, SummedAgreement):
+        return agreement.given
     coder_index(agreement)
     n_coders, n_entries = agreement.labels.n_coders, agreement.profiles.value_index.size
     given = np.zeros(n_coders * n_entries, dtype=np.int64)

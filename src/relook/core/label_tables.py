@@ -7,8 +7,14 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.contributions import PairParts, coder_index, entry_parts, shares
-from relook.core.exact import FloatArray, IntArray, grouped_sums, numbered
+from relook.core.contributions import (
+    PairParts,
+    coder_entries,
+    coder_index,
+    entry_parts,
+    shares,
+)
+from relook.core.exact import FloatArray, IntArray, grouped_sums
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -69,14 +75,13 @@ def label_table(agreement: Agreement) -> LabelParts:
 
 def label_use(agreement: Agreement) -> Use:
     """Return how often each coder gave each value, among pairable labels."""
-    coder = coder_index(agreement)
-    labels = agreement.labels
-    pairable = labels.labels_per_item[labels.item_index] >= 2
-    n_values = max(1, labels.n_values)
-    keys = coder[pairable].astype(np.int64) * n_values + labels.value_index[pairable]
-    key, _, often = numbered(keys, n_values * max(1, labels.n_coders))
-    of_coder, value = np.divmod(key, n_values)
-    return Use(of_coder, value, often)
+    given, profiles = coder_entries(agreement), agreement.profiles
+    pairable = profiles.size[profiles.profile_of_entry] >= 2
+    value = profiles.value_index[pairable]
+    table = np.zeros((given.shape[0], profiles.n_values), dtype=np.int64)
+    np.add.at(table.T, value, given[:, pairable].T)
+    of_coder, of_value = np.nonzero(table)
+    return Use(of_coder, of_value, table[of_coder, of_value])
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -8,6 +8,7 @@ by its multiplicity. Profiles of two parts of the data merge by addition.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -96,34 +97,40 @@ class Profiles:
         order = np.argsort(profile, kind="stable")
         return profile[order], np.concatenate(firsts)[order], np.concatenate(seconds)[order]
 
-    def merged_with(self, other: Profiles) -> Profiles:
-        """Return the profiles of both parts of the data together.
 
-        Notes
-        -----
-        Both parts must use the same value codes.
-        """
-        values = np.concatenate([self.value_index, other.value_index])
-        counts = np.concatenate([self.count, other.count])
-        n_labels = np.concatenate([self.size, other.size])
-        each = np.concatenate([self.profile_of_entry, other.profile_of_entry + self.n_profiles])
-        labels = CodedLabels(
-            np.repeat(each, counts),
-            np.repeat(values, counts),
-            None,
-            n_items=n_labels.size,
-            n_values=max(self.n_values, other.n_values),
-            n_coders=0,
-        )
-        together, profile_of = collapse(labels)
-        multiplicity = np.bincount(
-            profile_of,
-            weights=np.concatenate([self.multiplicity, other.multiplicity]),
-            minlength=together.n_profiles,
-        ).astype(np.int64)
-        return Profiles(
-            together.value_index, together.count, together.start, multiplicity, together.n_values
-        )
+def merge(parts: Sequence[Profiles], n_values: int) -> tuple[Profiles, list[IntArray]]:
+    """Return the profiles of several parts of the data together.
+
+    Parameters
+    ----------
+    parts : sequence of Profiles
+        At least one; all use the same value codes.
+    n_values : int
+
+    Returns
+    -------
+    profiles : Profiles
+        Multiplicities added, in the order that `collapse` gives.
+    place : list of int arrays
+        For each part the place of its profiles among them.
+    """
+    counts = np.concatenate([part.count for part in parts])
+    values = np.concatenate([part.value_index for part in parts])
+    begins = np.cumsum([0, *(part.n_profiles for part in parts)])
+    each = [part.profile_of_entry + begin for part, begin in zip(parts, begins, strict=False)]
+    labels = CodedLabels(
+        np.repeat(np.concatenate(each), counts),
+        np.repeat(values, counts),
+        None,
+        n_items=int(begins[-1]),
+        n_values=n_values,
+        n_coders=0,
+    )
+    found, place = collapse(labels)
+    often = np.zeros(found.n_profiles, dtype=np.int64)
+    np.add.at(often, place, np.concatenate([part.multiplicity for part in parts]))
+    together = Profiles(found.value_index, found.count, found.start, often, n_values)
+    return together, np.split(place, begins[1:-1])
 
 
 def collapse(labels: CodedLabels) -> tuple[Profiles, IntArray]:

@@ -350,7 +350,8 @@ def _block_sizes(resamples: int, width: int) -> Iterator[int]:
 
 
 def _pairable_items(agreement: Agreement) -> IntArray:
-    return np.flatnonzero(agreement.labels.labels_per_item >= 2)
+    size = np.append(agreement.profiles.size, 0)  # -1 stands for an item without labels
+    return np.flatnonzero(size[agreement.profile_of_item] >= 2)
 
 
 def _percentiles(

@@ -8,14 +8,17 @@ from typing import Annotated
 import typer
 
 from relook.cli.options import (
+    ByItemOption,
     DebugOption,
     DifferenceOption,
     DryRunOption,
+    EngineOption,
     ForceOption,
     HoursOption,
     JsonOption,
     QuietOption,
     RankByOption,
+    SchedulerOption,
     SecondsOption,
     SeedOption,
     ShareOption,
@@ -68,6 +71,9 @@ def queue(
     include_single: Annotated[
         bool, typer.Option("--include-single", help="Send items with a single label too.")
     ] = False,
+    engine: EngineOption = None,
+    scheduler: SchedulerOption = None,
+    by_item: ByItemOption = False,
     seed: SeedOption = None,
     dry_run: DryRunOption = False,
     force: ForceOption = False,
@@ -77,8 +83,10 @@ def queue(
 ) -> None:
     """Rank the items, select those most worth a second look, and write worksheets for them."""
     with running(quiet=quiet, debug=debug) as terminal:
+        import contextlib
         from dataclasses import replace
 
+        from relook.cli.parts import loader_with_dask, wants_dask
         from relook.cli.screens.queue import queue_screen
         from relook.cli.targets import project_to_write
         from relook.project.figures.ordering import DEFAULT_SEED, settings_of_queue
@@ -109,7 +117,14 @@ def queue(
             reissue=reissue,
             reissue_to=to,
         )
-        with terminal.doing() as doing:
+        dask = wants_dask(engine, scheduler=scheduler, by_item=by_item)
+        with contextlib.ExitStack() as stack:
+            loader = None
+            if dask:
+                loader = stack.enter_context(
+                    loader_with_dask(request, terminal, scheduler=scheduler, by_item=by_item)
+                )
+            doing = stack.enter_context(terminal.doing())
             done = run_queue(
                 project,
                 request,
@@ -118,6 +133,7 @@ def queue(
                 dry_run=dry_run,
                 force=force,
                 doing=doing,
+                loader=loader,
             )
         for line in done.loaded.said:
             terminal.say(line)

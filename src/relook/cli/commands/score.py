@@ -8,13 +8,16 @@ from typing import Annotated, Any
 import typer
 
 from relook.cli.options import (
+    ByItemOption,
     DebugOption,
     DifferenceOption,
+    EngineOption,
     ForceOption,
     HoursOption,
     JsonOption,
     QuietOption,
     RankByOption,
+    SchedulerOption,
     SecondsOption,
     SeedOption,
     ShareOption,
@@ -62,6 +65,9 @@ def score(
             "`bar` takes it from relook.toml.",
         ),
     ] = None,
+    engine: EngineOption = None,
+    scheduler: SchedulerOption = None,
+    by_item: ByItemOption = False,
     seed: SeedOption = None,
     force: ForceOption = False,
     as_json: JsonOption = False,
@@ -70,6 +76,7 @@ def score(
 ) -> None:
     """Show alpha, observed and expected disagreement, and where the disagreement lives."""
     with running(quiet=quiet, debug=debug) as terminal:
+        from relook.cli.parts import refuse_beside_dask, score_with_dask, wants_dask
         from relook.cli.screens.score import score_screen
         from relook.cli.targets import open_target
         from relook.project.archive.codings import FIRST_CODING, coding_numbered, load_coding
@@ -98,25 +105,36 @@ def score(
             "seconds_per_item": seconds_per_item,
         }
         queue = settings_of_queue(project.settings.queue, overrides)
-        if coding is None or coding == FIRST_CODING:
+        if wants_dask(engine, scheduler=scheduler, by_item=by_item):
+            refuse_beside_dask(("--items", items), ("--merge", merge), ("--coding", coding))
+            loaded = None
+        elif coding is None or coding == FIRST_CODING:
             with terminal.doing() as doing:
                 loaded = load(project, only=variable, doing=doing)
         else:
             if not project.settings.project:
                 raise RelookError("a bare table has one coding alone", mend="name a project folder")
             loaded = load_coding(project, coding_numbered(project, coding), only=variable)
+        seed = DEFAULT_SEED if seed is None else seed
+        if loaded is None:
+            scored = score_with_dask(
+                project, queue, terminal, scheduler=scheduler, by_item=by_item, seed=seed,
+                only=variable,
+            )  # fmt: skip
+            loaded = scored.loaded
+        else:
+            with terminal.doing() as doing:
+                scored = scoring.score(
+                    loaded,
+                    queue,
+                    seed=seed,
+                    with_doubt=items is not None,
+                    merge=groups,
+                    doing=doing,
+                )
         for line in loaded.said:
             terminal.say(line)
         terminal.problems(loaded.problems)
-        with terminal.doing() as doing:
-            scored = scoring.score(
-                loaded,
-                queue,
-                seed=DEFAULT_SEED if seed is None else seed,
-                with_doubt=items is not None,
-                merge=groups,
-                doing=doing,
-            )
         if scored.changed_files:
             terminal.warn(changed_warning(scored.changed_files))
         if items is not None:

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from typing import get_args
 
 import numpy as np
+import numpy.typing as npt
 import pandas as pd
 
 from relook.core.agreement import Agreement
@@ -15,6 +16,7 @@ from relook.core.doubt import Doubt, estimate_doubt, no_ground
 from relook.core.exact import BoolArray, FloatArray, IntArray
 from relook.core.ranking import RankBy, RankedVariable, Ranking, rank_items
 from relook.core.selection import Selection, select_head
+from relook.core.summed import NOT_AT_HAND, SummedAgreement
 from relook.errors import RelookError, listed, nearest
 from relook.project.figures.consensus_texts import consensus_for
 from relook.project.setup.loading import Loaded, item_texts
@@ -136,6 +138,8 @@ def ranked_variable(
 
 def is_quick(agreement: Agreement) -> bool:
     """Whether doubt is estimated within seconds, so that it may break ties unasked."""
+    if isinstance(agreement, SummedAgreement):
+        return False
     used = np.count_nonzero(np.bincount(agreement.labels.value_index))
     return int(used) * agreement.n_labels <= QUICK_DOUBT
 
@@ -154,7 +158,7 @@ def doubt_of(agreement: Agreement, *, every: bool = False) -> Doubt:
     every : bool
         However long it takes.
     """
-    because = no_ground(agreement)
+    because = NOT_AT_HAND if isinstance(agreement, SummedAgreement) else no_ground(agreement)
     if because is None and not every and not is_quick(agreement):
         because = NOT_ASKED
     if because is not None:
@@ -177,9 +181,15 @@ def _refuse_order_by_doubt(doubts: Mapping[str, Doubt]) -> None:
 
 def item_hashes(loaded: Loaded, seed: int) -> IntArray:
     """Return a keyed hash of each item's id, so that no tie follows the order of the file."""
+    known = loaded.hashes.get(seed)
+    return hashed_ids(loaded.labels.items, seed) if known is None else known
+
+
+def hashed_ids(items: npt.NDArray[np.object_], seed: int) -> IntArray:
+    """Return the keyed hash of each of some ids, wherever they were read."""
     key = hashlib.sha256(f"tie order {seed}".encode()).hexdigest()[:16]
-    items = np.asarray(loaded.labels.items, dtype=object)
-    hashed = pd.util.hash_array(items, hash_key=key, categorize=False)
+    ids = np.asarray(items, dtype=object)
+    hashed = pd.util.hash_array(ids, hash_key=key, categorize=False)
     return (hashed >> np.uint64(1)).astype(np.int64)
 
 

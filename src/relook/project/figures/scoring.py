@@ -25,6 +25,7 @@ from relook.core.merging import Merger
 from relook.core.resampling import CONFIDENCE_LEVEL, RESAMPLES, IntervalResult, alpha_interval
 from relook.core.sample_size import needed_items
 from relook.core.settling import Prospect, prospect
+from relook.core.summed import NOT_AT_HAND, SummedAgreement
 from relook.core.without_coder import WithoutCoder, alpha_without_coder
 from relook.errors import Place, RelookError
 from relook.project.archive.independence import changed_since_first_round
@@ -303,6 +304,8 @@ def _left_out(agreement: Agreement) -> tuple[str | None, str | None]:
     """Why alpha without each coder, and why the pairs of coders, are left out."""
     if agreement.labels.coder_index is None:
         return NO_CODERS, NO_CODERS
+    if isinstance(agreement, SummedAgreement):
+        return None, NOT_AT_HAND
     n_coders = agreement.labels.n_coders
     too_long = n_coders * agreement.profiles.value_index.size > MOST_WITHOUT
     too_many = n_coders * (n_coders - 1) // 2 > MOST_CODER_PAIRS

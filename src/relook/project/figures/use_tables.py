@@ -6,6 +6,7 @@ import numpy as np
 
 from relook.core.crossings import group_coder_parts, group_label_pair_parts
 from relook.core.label_tables import label_use, meetings
+from relook.core.summed import SummedAgreement
 from relook.project.figures.ordering import groups_of
 from relook.project.figures.score_tables import Row
 from relook.project.figures.scoring import Score, VariableScore
@@ -36,7 +37,7 @@ def label_use_rows(scored: VariableScore) -> list[Row]:
 
 def two_coders(scored: VariableScore) -> tuple[int, int] | None:
     """Return the two coders of a variable that has just two, in order of first appearance."""
-    if scored.coders is None:
+    if scored.coders is None or isinstance(scored.agreement, SummedAgreement):
         return None
     taking_part = np.flatnonzero(scored.coders.n_labels)
     return (int(taking_part[0]), int(taking_part[1])) if taking_part.size == 2 else None

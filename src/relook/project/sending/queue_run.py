@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -57,6 +59,7 @@ def run_queue(
     dry_run: bool = False,
     force: bool = False,
     doing: Doing = silently,
+    loader: Callable[[Project], Loaded] | None = None,
 ) -> QueueRun:
     """Plan a round and write it.
 
@@ -74,18 +77,21 @@ def run_queue(
         Replace files that exist.
     doing : callable, optional
         Told what is being done, in words for the user.
+    loader : callable, optional
+        Loads the project where its labels do not lie here.
 
     Raises
     ------
     RelookError
         See `plan_round` and `write_round`.
     """
+    loaded_by = partial(load, doing=doing) if loader is None else loader
     if new_project and not dry_run:
         with folder_for(project) as made:
-            loaded = load(made, doing=doing)
+            loaded = loaded_by(made)
             doing("ranking items and planning the round")
             return _write(loaded, request, stamp, new_project=True, force=force)
-    loaded = load(project, doing=doing)
+    loaded = loaded_by(project)
     doing("ranking items and planning the round")
     if dry_run:  # a rehearsal leaves no trace, not even a secret
         return _plan(loaded, request, project.secret_or_new(), stamp, dry_run=True)

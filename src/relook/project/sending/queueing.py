@@ -149,7 +149,7 @@ def plan_round(
             mend="collect its worksheets first, or add --next to send another round all the same",
         )
     left_out = left_out_items(loaded, history, again=request.again)
-    n_audit = _n_audit(request, history)
+    n_audit = n_audit_of(request, history)
     overlap = overlap_of(settings)
     ordering = order_items(
         loaded,
@@ -295,7 +295,8 @@ def _nothing_to_queue(loaded: Loaded, history: History) -> RelookError:
     return RelookError(said, mend=mend, exit_code=ExitCode.FALLS_SHORT)
 
 
-def _n_audit(request: QueueRequest, history: History) -> int:
+def n_audit_of(request: QueueRequest, history: History) -> int:
+    """Return how many audit items a round draws: in later rounds only what is asked for."""
     if request.splits_only:
         return 0
     if request.audit is not None:

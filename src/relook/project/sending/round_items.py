@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 
 import numpy as np
 
-from relook.core.audit import STRATA, allocate, draw_audit, stratify
-from relook.core.exact import BoolArray, IntArray
+from relook.core.audit import STRATA, AuditDraw, allocate, draw_audit, stratify
+from relook.core.exact import BoolArray
 from relook.project.archive.history import History
 from relook.project.archive.rounds import RoundStratum
 from relook.project.figures.ordering import Ordering, item_hashes
@@ -88,6 +88,37 @@ def second_opinions(loaded: Loaded, history: History) -> list[PlanItem]:
     return found
 
 
+def audit_draws(
+    loaded: Loaded,
+    seed: int,
+    n_audit: int,
+    left_out: Mapping[str, BoolArray],
+    sent: Mapping[str, BoolArray],
+) -> list[tuple[str, AuditDraw]]:
+    """Draw from each variable's items that are neither left out nor sent anyway; nothing for 0."""
+    if n_audit == 0:
+        return []
+    strata_of = {
+        name: stratify(agreement, left_out[name] | sent[name])
+        for name, agreement in loaded.agreements.items()
+    }
+    sizes = np.array([int((stratum >= 0).sum()) for stratum in strata_of.values()])
+    shares = allocate(sizes, n_audit)
+    hashes = item_hashes(loaded, seed)
+    return [
+        (
+            name,
+            draw_audit(
+                stratum,
+                int(shares[position]),
+                np.random.default_rng([seed, position]),
+                item_hash=hashes,
+            ),
+        )
+        for position, (name, stratum) in enumerate(strata_of.items())
+    ]
+
+
 def audit_items(
     loaded: Loaded,
     seed: int,
@@ -99,22 +130,13 @@ def audit_items(
 
     With several variables the draws are shared out in proportion to what each would release.
     """
-    if n_audit == 0:
-        return [], ()
-    strata_of: dict[str, IntArray] = {}
-    for name, agreement in loaded.agreements.items():
-        sent = np.zeros(len(loaded.labels.items), dtype=bool)
+    sent = {name: np.zeros(len(loaded.labels.items), dtype=bool) for name in loaded.agreements}
+    for name, mask in sent.items():
         numbers = loaded.item_numbers([held.item for held in queued if name in held.variables])
-        sent[numbers[numbers >= 0]] = True
-        strata_of[name] = stratify(agreement, left_out[name] | sent)
-    sizes = np.array([int((stratum >= 0).sum()) for stratum in strata_of.values()])
-    shares = allocate(sizes, n_audit)
-    hashes = item_hashes(loaded, seed)
+        mask[numbers[numbers >= 0]] = True
     items: list[PlanItem] = []
     strata: list[RoundStratum] = []
-    for position, (name, stratum) in enumerate(strata_of.items()):
-        rng = np.random.default_rng([seed, position])
-        draw = draw_audit(stratum, int(shares[position]), rng, item_hash=hashes)
+    for name, draw in audit_draws(loaded, seed, n_audit, left_out, sent):
         items += [
             _plan_item(loaded, item, (name,), "audit", STRATA[at])
             for item, at in zip(draw.item_index.tolist(), draw.stratum.tolist(), strict=True)

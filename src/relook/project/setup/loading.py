@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from pathlib import Path
 
@@ -39,12 +39,15 @@ class Loaded:
     items : ItemData or None
     agreements : dict of str to Agreement
         One per variable, in the order of the settings.
+    hashes : dict of int to int array of shape (n_items,)
+        Keyed hashes of the items' ids by seed, where they were taken when the labels were read.
     """
 
     project: Project
     labels: LabelData
     items: ItemData | None
     agreements: dict[str, Agreement]
+    hashes: dict[int, IntArray] = field(default_factory=dict)
 
     @property
     def problems(self) -> tuple[Problem, ...]:
