@@ -169,3 +169,17 @@ def test_the_marsh_calls_are_told_from_their_mess() -> None:
     assert held.source.missing == ("", "NA", "N/A", "-")
     assert held.items is not None
     assert held.items.key == "clip_id"
+
+
+def test_a_coder_with_a_space_in_the_name_is_one_coder(tmp_path: Path) -> None:
+    """Category Bert K. is Bert K.'s column of the one variable that all columns are of."""
+    file = tmp_path / "wide.csv"
+    file.write_text(
+        "Ticket,Text,Category Anna,Category Bert K.,Category Dov\n"
+        "1,hello there,Billing,Refund,Billing\n2,hi there you,Refund,Refund,Refund\n"
+        "3,what is this,Login,Login,Billing\n4,no idea at all,Billing,Login,Billing\n",
+        encoding="utf-8",
+    )
+    said = " ".join(guess([file]).said)
+    assert 'coders: "Anna", "Bert K.", "Dov"' in said
+    assert "Category Bert" not in said.replace("Category Bert K.", "")

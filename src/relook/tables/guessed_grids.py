@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections import Counter
 from collections.abc import Sequence
 
 import numpy as np
@@ -52,11 +53,15 @@ def matching_headers(
             f'the pattern "{pattern}" must hold {{variable}} and {{coder}} once each',
             mend='write for instance --columns "{variable}_{coder}"',
         )
-    escaped = re.escape(pattern)
-    for name in ("variable", "coder"):
-        escaped = escaped.replace(re.escape(f"{{{name}}}"), f"(?P<{name}>.+)")
-    found = [(re.fullmatch(escaped, one.header.strip()), one) for one in columns]
-    matched = [(match["variable"], match["coder"], one) for match, one in found if match]
+    splits = [(_possible_splits(one.header.strip(), pattern), one) for one in columns]
+    often = Counter(variable for found, _ in splits for variable in {name for name, _ in found})
+    matched = []
+    for found, one in splits:
+        if found:
+            # A name with the separator in it fits in several ways; that of most columns is meant,
+            # and where it makes no difference the longest variable.
+            variable, coder = max(found, key=lambda split: (often[split[0]], len(split[0])))
+            matched.append((variable, coder, one))
     if not matched:
         raise RelookError(
             f'no column fits "{pattern}"; the columns are {listed(one.header for one in columns)}',
@@ -64,6 +69,24 @@ def matching_headers(
             mend="change the pattern",
         )
     return matched
+
+
+def _possible_splits(header: str, pattern: str) -> list[tuple[str, str]]:
+    """Every way in which a header can be a variable and a coder by a pattern."""
+    variable_first = pattern.index("{variable}") < pattern.index("{coder}")
+    before, between, after = re.split(r"\{variable\}|\{coder\}", pattern)
+    if not header.startswith(before) or not header.endswith(after):
+        return []
+    body = header[len(before) : len(header) - len(after)]
+    cuts = (
+        [found.start() for found in re.finditer(f"(?={re.escape(between)})", body)]
+        if between
+        else range(len(body))
+    )
+    parts = [(body[:cut], body[cut + len(between) :]) for cut in cuts]
+    return [
+        (one, other) if variable_first else (other, one) for one, other in parts if one and other
+    ]
 
 
 def guess_counts(columns: Sequence[Sketch], *, certain: bool = True) -> list[Sketch]:
