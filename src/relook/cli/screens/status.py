@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Mapping
 from typing import Any
 
 from rich.console import RenderableType
@@ -18,7 +19,7 @@ from relook.cli.screens.layout import (
     stacked,
 )
 from relook.project.archive.codings import CODERS
-from relook.project.returning.standing import Standing
+from relook.project.returning.standing import SheetStanding, Standing
 from relook.project.setup.folder import Project
 from relook.project.setup.people import names_by_id
 
@@ -37,42 +38,14 @@ def status_screen(standing: Standing, project: Project) -> RenderableType:
             Text(""),
             heading(f"round {held.number}, {held.made[:10]}"),
             note(f"alpha of independent labels: {alphas}"),
-            small_table(
-                ("worksheet", "for", "rows", "decided", "open"),
-                [
-                    (
-                        sheet.file,
-                        names.get(sheet.adjudicator, sheet.adjudicator),
-                        count(sheet.n_rows),
-                        count(sheet.n_decided),
-                        count(sheet.n_rows - sheet.n_decided),
-                    )
-                    for sheet in standing.sheets
-                    if sheet.round == held.number
-                ],
-                numbers=(2, 3, 4),
-            ),
+            _sheets("worksheet", "decided", standing.sheets, held.number, names),
         ]
     for held in standing.codings:
         coders: dict[str, str] = held.settings[CODERS]
         parts += [
             Text(""),
             heading(f"coding {held.number}, {held.made[:10]}"),
-            small_table(
-                ("coding sheet", "for", "rows", "answered", "open"),
-                [
-                    (
-                        sheet.file,
-                        coders.get(sheet.adjudicator, sheet.adjudicator),
-                        count(sheet.n_rows),
-                        count(sheet.n_decided),
-                        count(sheet.n_rows - sheet.n_decided),
-                    )
-                    for sheet in standing.coding_sheets
-                    if sheet.round == held.number
-                ],
-                numbers=(2, 3, 4),
-            ),
+            _sheets("coding sheet", "answered", standing.coding_sheets, held.number, coders),
         ]
     if standing.states:
         said = ", ".join(f"{state} {n:,}" for state, n in standing.states.items())
@@ -109,6 +82,31 @@ def status_screen(standing: Standing, project: Project) -> RenderableType:
             parts.append(note(f"{counted(len(keys), 'row')} {said}: {items}"))
     parts += [Text(""), note(f"next: {standing.next_step}")]
     return stacked(*parts)
+
+
+def _sheets(
+    what: str,
+    done: str,
+    sheets: Iterable[SheetStanding],
+    number: int,
+    names: Mapping[str, str],
+) -> RenderableType:
+    """The sheets of one round or coding: whose they are, and how far along."""
+    return small_table(
+        (what, "for", "rows", done, "open"),
+        [
+            (
+                sheet.file,
+                names.get(sheet.adjudicator, sheet.adjudicator),
+                count(sheet.n_rows),
+                count(sheet.n_decided),
+                count(sheet.n_rows - sheet.n_decided),
+            )
+            for sheet in sheets
+            if sheet.round == number
+        ],
+        numbers=(2, 3, 4),
+    )
 
 
 def status_object(standing: Standing, project: Project) -> dict[str, Any]:
