@@ -9,15 +9,13 @@ from reference import by_definition as twin
 from reference.cases import CASES, measured, tables
 from reference.published import coder_rows, what_if
 from relook.core.agreement import measure_agreement
+from relook.core.coder_parts import coder_pair_parts, coder_parts, label_parts
 from relook.core.contributions import (
     alpha_costs,
-    coder_pair_parts,
-    coder_parts,
     group_parts,
     intensity,
     item_contributions,
     label_pair_parts,
-    label_parts,
     shares,
 )
 from relook.core.crossings import group_coder_parts, group_label_pair_parts

@@ -353,7 +353,12 @@ def test_distance_to_the_item_sums_to_the_whole():
 
 @pytest.mark.parametrize(
     ("name", "options"),
-    [("ratio", {}), ("polar", {"ends": [0, 9]}), ("table", {"table": ENTRIES})],
+    [
+        ("ratio", {}),
+        ("polar", {"ends": [0, 9]}),
+        ("table", {"table": ENTRIES}),
+        ("tree", {"separator": "/"}),
+    ],
 )
 def test_bare_codes_have_nothing_to_check(name, options):
     """Values of which neither text nor number is known cannot be out of bounds."""

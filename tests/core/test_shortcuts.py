@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 
 from relook.core import labels as labels_module
 from relook.core.agreement import measure_agreement
-from relook.core.contributions import coder_entries, coder_pair_parts, coder_parts, label_entries
+from relook.core.coder_parts import coder_entries, coder_pair_parts, coder_parts, label_entries
 from relook.core.differences import DIFFERENCE_FUNCTIONS
 from relook.core.exact import numbered
 from relook.core.labels import CodedLabels

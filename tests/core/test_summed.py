@@ -6,7 +6,8 @@ import numpy as np
 import pytest
 
 from reference.cases import CASES, tables
-from relook.core.contributions import coder_entries, coder_parts, item_contributions
+from relook.core.coder_parts import coder_entries, coder_parts
+from relook.core.contributions import item_contributions
 from relook.core.label_tables import label_use
 from relook.core.labels import CodedLabels
 from relook.core.resampling import alpha_interval

@@ -13,13 +13,8 @@ from hypothesis import strategies as st
 from properties.strategies import N_VALUES, Table, tables
 from reference.by_definition import coded
 from relook.core.agreement import Agreement, coincidence_matrix, measure_agreement
-from relook.core.contributions import (
-    coder_pair_parts,
-    coder_parts,
-    item_contributions,
-    label_pair_parts,
-    label_parts,
-)
+from relook.core.coder_parts import coder_pair_parts, coder_parts, label_parts
+from relook.core.contributions import item_contributions, label_pair_parts
 from relook.core.differences import (
     DIFFERENCE_FUNCTIONS,
     DifferenceTable,

@@ -10,13 +10,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.contributions import (
-    check_groups,
-    coder_index,
-    label_parts,
-    shares,
-    value_pair_parts,
-)
+from relook.core.coder_parts import coder_index, label_parts
+from relook.core.contributions import check_groups, shares, value_pair_parts
 from relook.core.exact import FloatArray, IntArray, grouped_sums
 from relook.core.ties import tie_levels
 

@@ -7,13 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.contributions import (
-    PairParts,
-    coder_entries,
-    coder_index,
-    entry_parts,
-    shares,
-)
+from relook.core.coder_parts import coder_entries, coder_index
+from relook.core.contributions import PairParts, entry_parts, shares
 from relook.core.exact import FloatArray, IntArray, grouped_sums
 
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import Agreement
-from relook.core.contributions import coder_entries
+from relook.core.coder_parts import coder_entries
 from relook.core.exact import BoolArray, FloatArray, IntArray, quotients
 
 
@@ -62,11 +62,6 @@ def alpha_without_coder(agreement: Agreement) -> WithoutCoder:
         touched = given[one] * pairable
         alpha[one], n_items[one], n_labels[one] = _without(agreement, touched, pairable)
     return WithoutCoder(alpha, n_items, n_labels)
-
-
-def entry_count(agreement: Agreement) -> int:
-    """Return the number of profile entries."""
-    return int(agreement.profiles.value_index.size)
 
 
 def _without(

@@ -8,12 +8,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from relook.core.agreement import NOTHING_PAIRABLE, Agreement
+from relook.core.coder_parts import coder_pair_parts, coder_parts
 from relook.core.consensus import Consensus
 from relook.core.contributions import (
     PairParts,
     Parts,
-    coder_pair_parts,
-    coder_parts,
     group_parts,
     item_contributions,
     label_pair_parts,
