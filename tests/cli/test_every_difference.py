@@ -18,6 +18,20 @@ from relook.cli.app import run
 from relook.core.differences import DIFFERENCE_FUNCTIONS
 
 CODERS = ("ann", "bo", "cy")
+SETS = (
+    'separator = ";"\nlabels = ["a", "b", "c"]\n',
+    [
+        ("a", "a", "a"),
+        ("a;b", "b; a", "a;b"),
+        ("a", "b;c", "a;c"),
+        ("b", "b", "b"),
+        ("c", "c", "b;c"),
+        ("a;b;c", "a", "b"),
+    ],
+    "a;c",
+    "a;d",
+    '"d"',
+)
 #: Difference function → (TOML of the variable, labels of six items by three coders, a decision for
 #: the item that is disputed most, a label that cannot be, what is said of it).
 CASES = {
@@ -54,22 +68,8 @@ CASES = {
         "11",
         "lies outside the ends 0 and 10",
     ),
-    "jaccard": (
-        'separator = ";"\nlabels = ["a", "b", "c"]\n',
-        [("a", "a", "a"), ("a;b", "b; a", "a;b"), ("a", "b;c", "a;c"), ("b", "b", "b"),
-         ("c", "c", "b;c"), ("a;b;c", "a", "b")],
-        "a;c",
-        "a;d",
-        '"d"',
-    ),
-    "masi": (
-        'separator = ";"\nlabels = ["a", "b", "c"]\n',
-        [("a", "a", "a"), ("a;b", "b; a", "a;b"), ("a", "b;c", "a;c"), ("b", "b", "b"),
-         ("c", "c", "b;c"), ("a;b;c", "a", "b")],
-        "a;c",
-        "a;d",
-        '"d"',
-    ),
+    "jaccard": SETS,
+    "masi": SETS,
     "tree": (
         'separator = "/"\n',
         [("x/a", "x/a", "x/b"), ("x", "x", "x"), ("y/a", "x/a", "y"), ("y/a", "y/a", "y/a"),

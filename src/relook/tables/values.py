@@ -165,7 +165,8 @@ def _numeric_order(variable: Variable, texts: Sequence[str]) -> CodedValues:
     more = ", …]" if len(texts) > 6 else "]"
     message = BadLabel(
         f'the order of "{words[0]}" is not known: ordinal labels that are words must be declared',
-        f'list the labels of "{variable.name}" from lowest to highest: labels = [{example}{more}',
+        f'list the labels of "{variable.name}" from lowest to highest (here they stand by the '
+        f"alphabet): labels = [{example}{more}",
     )
     codes = np.full(len(texts), -1, dtype=np.int64)
     return CodedValues((), Values.from_texts(()), codes, {texts.index(words[0]): message})
