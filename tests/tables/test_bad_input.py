@@ -820,8 +820,10 @@ CASES: list[Case] = [
             (
                 'the order of "low" is not known: ordinal labels that are words must be declared',
                 't.csv, row 2, column "label"',
-                'list the labels of "label" from lowest to highest (here they stand by the '
-                'alphabet): labels = ["high", "low"]',
+                (
+                    'list the labels of "label" from lowest to highest (here they stand by the '
+                    'alphabet): labels = ["high", "low"]'
+                ),
             )
         ],
     ),
