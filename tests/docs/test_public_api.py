@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import inspect
+import os
 import subprocess
 import sys
 import textwrap
@@ -105,6 +106,10 @@ def test_a_strict_checker_outside_accepts_it(tmp_path):
         encoding="utf-8",
     )
     source = Path(relook.__file__).parents[1]
+    # Where relook is installed its py.typed has to do; a checkout must be pointed at.
+    environment = dict(os.environ)
+    if source.name != "site-packages":
+        environment["MYPYPATH"] = str(source)
     settings = tmp_path / "mypy.ini"
     settings.write_text("[mypy]\n", encoding="utf-8")
     command = [sys.executable, "-m", "mypy", "--strict", "--config-file", str(settings)]
@@ -116,7 +121,7 @@ def test_a_strict_checker_outside_accepts_it(tmp_path):
             cwd=tmp_path,
             capture_output=True,
             text=True,
-            env={**__import__("os").environ, "MYPYPATH": str(source)},
+            env=environment,
         )
 
     good = checked("good.py")
