@@ -162,8 +162,8 @@ def _standing(held: Explanation) -> list[str]:
         doubt = "below 1%" if held.doubt < 0.01 else f"{held.doubt:.0%}"
         of = "the likeliest of them" if held.tied else "the consensus label"
         lines.append(
-            f"doubt {doubt}: the chance that {of} is wrong, by a model of how each coder labels "
-            "(Dawid & Skene 1979) that takes their errors for independent"
+            f"doubt {doubt}: a score that {of} is wrong, by a model of how each coder labels "
+            "(Dawid & Skene 1979) that takes their errors for independent; not calibrated"
         )
     else:
         lines.append(f"doubt is undefined: {held.doubt_undefined_because}")

@@ -51,7 +51,8 @@ CORRECTED = (
 DISPUTED_ONLY = (
     "On disputed items somebody must differ from the decision, and they are the hardest: they "
     "alone "
-    "do not judge a person. Audit items were drawn at random."
+    "do not judge a person. Audit items were drawn at random from what was not queued, so they are "
+    "the easier ones."
 )
 
 

@@ -226,11 +226,17 @@ def _audit(held: AuditFindings) -> str:
     if result.share_ruled_otherwise is None:
         return f"{said}; no share is estimated, as {result.undefined_because}."
     total = sum(part.n_items for part in result.strata)
+    ties = (
+        f" {held.n_ties:,} of the ruled items had tied labels and count as not ruled otherwise, as "
+        "if ties were released blank."
+        if held.n_ties
+        else ""
+    )
     return (
         f"{said}; weighted by the sizes of the strata (Begg & Greenes 1983), an estimated "
         f"{result.share_ruled_otherwise:.1%} of {total:,} items ({result.confidence_level:.0%} "
         f"interval {result.low:.1%} to {result.high:.1%}; exact limits combined after Zou et al. "
-        "2009)."
+        f"2009).{ties}"
     )
 
 
