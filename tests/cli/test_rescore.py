@@ -53,7 +53,7 @@ def test_the_screen_sets_alpha_and_the_corrected_data_side_by_side(project, caps
         "alpha, independent labels",
         "the same, on the items in both",
         "agreement in the corrected data",
-        "Alpha is of the labels that coders made independently of each other",
+        "Alpha is of the labels as they were before the first round, and a reliability only if",
         "No interval is put on that distance.",
         "2 items settled, 1 cannot be coded, 0 split, 0 unconfirmed, 0 open (withdrawn)",
         "a → cannot be coded",

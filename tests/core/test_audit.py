@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from scipy.stats import hypergeom
 
 from relook.core.agreement import measure_agreement
 from relook.core.audit import (
@@ -104,7 +105,9 @@ def test_a_stratum_without_a_ruling_leaves_the_release_undefined() -> None:
     assert got.share_ruled_otherwise is None
     assert got.undefined_because == "no audit item was ruled on among the items that are single"
     assert got.strata[0].share == 0
-    assert got.strata[0].bound_if_clean == pytest.approx(0.0495, abs=5e-5)
+    # 59 of 90 drawn, nothing found: up to 3 of the other 31 may be otherwise (scipy's hypergeom).
+    assert hypergeom.cdf(0, 90, 3, 59) > 0.025 > hypergeom.cdf(0, 90, 4, 59)
+    assert (got.strata[0].low, got.strata[0].high) == (0, 3 / 90)
     assert got.strata[1].share is None
     assert estimate({}, {}, {}).undefined_because == "nothing would be released without a decision"
 
@@ -163,13 +166,34 @@ def test_too_many_draws_are_taken_back_where_most_was_given() -> None:
 
 
 def test_each_stratum_has_its_own_share_and_interval() -> None:
-    """12 of 40: share .3, Wilson's limits (1927) 0.1807 and 0.4543, by the formula in fractions."""
+    """12 of 40 drawn from 100: share .3, and limits by the tails of scipy's hypergeom."""
     got = estimate({"unanimous": 100}, {"unanimous": 40}, {"unanimous": 12}).strata[0]
-    assert (got.share, got.bound_if_clean) == (0.3, None)
-    z = 1.959963984540054
-    middle = (0.3 + z * z / 80) / (1 + z * z / 40)
-    half = z * np.sqrt(0.3 * 0.7 / 40 + z * z / 6400) / (1 + z * z / 40)
-    assert (got.low, got.high) == (pytest.approx(middle - half), pytest.approx(middle + half))
+    assert got.share == 0.3
+    held = [
+        k
+        for k in range(12, 73)
+        if min(hypergeom.sf(11, 100, k, 40), hypergeom.cdf(12, 100, k, 40)) > 0.025
+    ]
+    assert (got.low, got.high) == (held[0] / 100, held[-1] / 100)
+
+
+def test_an_audit_of_everything_leaves_nothing_uncertain() -> None:
+    """All items of every stratum ruled on: the interval is the share itself."""
+    got = estimate({"unanimous": 8, "single": 2}, {"unanimous": 8, "single": 2}, {"unanimous": 1})
+    found = (got.low, got.share_ruled_otherwise, got.high)
+    assert found == pytest.approx((0.1, 0.1, 0.1), abs=1e-15)
+
+
+def test_a_draw_counts_the_ties_of_each_stratum() -> None:
+    """Of all items and of those drawn; none where nothing is said of ties."""
+    stratum = np.array([0, 0, 1, 1, 1, 1, 2, -1])
+    tied = np.array([False, False, True, True, False, False, False, True])
+    draw = draw_audit(stratum, 7, np.random.default_rng(4), tied=tied)
+    assert draw.tied == {"unanimous": 0, "not queued": 2, "single": 0}
+    assert draw.drawn_tied == draw.tied
+    some = draw_audit(stratum, 4, np.random.default_rng(4), tied=tied)
+    assert some.drawn_tied["not queued"] == int(tied[some.item_index].sum())
+    assert sum(draw_audit(stratum, 7, np.random.default_rng(4)).tied.values()) == 0
 
 
 def test_nothing_is_drawn_where_nothing_is_asked_for() -> None:

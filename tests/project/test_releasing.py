@@ -240,14 +240,21 @@ def test_the_methods_statement_carries_each_figure_with_its_condition(project):
             "(19 labels, which alpha is of), and coders differ on 6 of them."
         ),
         (
-            "Krippendorff's alpha of the labels that coders made independently (nominal differences) "
-            f"is {first.alpha:.3f} (observed disagreement {first.observed_disagreement:.4g}, expected "
+            "Krippendorff's alpha of the labels as they were before the first round of second looks "
+            "(nominal differences) is "
+            f"{first.alpha:.3f} (observed disagreement {first.observed_disagreement:.4g}, expected "
             f"{first.expected_disagreement:.4g}; Krippendorff 2004; 95% interval "
         ),
         (
-            "2 adjudicators ruled on items chosen by their contribution to the disagreement and on a "
-            "random audit, shown the competing labels, but not who or how many had given them: 1 item "
-            "was settled, 1 found impossible to code, 1 remained split."
+            "5 items were sent for a second look: 4 chosen by their contribution to the disagreement "
+            "and 1 drawn at random as an audit. 1 of them has no ruling, and keeps its coders' "
+            "labels. 2 adjudicators ruled on them, shown the competing "
+            "labels, but not who or how many had given them: 1 item was settled, 1 found impossible "
+            "to code, 1 remained split."
+        ),
+        (
+            "So that audit items could not be told from the others, they were shown with further "
+            "labels that nobody had given. 2 adjudicators share 1 item and agree on 0."
         ),
         (
             "1 ruling against unanimous coders was not confirmed by a second adjudicator and not "

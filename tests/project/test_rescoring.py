@@ -5,12 +5,15 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
+from scipy.stats import hypergeom
 
 from reference import by_definition
 from reference.concluded_project import Ruling, make_project, rule, send_round, write_labels
 from relook.core.decisions import Settlement
 from relook.errors import ExitCode, RelookError
-from relook.project.archive.rounds import Round, RoundRow, RoundStratum
+from relook.project.archive.record import read_record
+from relook.project.archive.rounds import Round, RoundRow, RoundStratum, read_rounds
+from relook.project.archive.settlements import settlements
 from relook.project.outcome import rescore_sentences as sentences
 from relook.project.outcome.audit_findings import audits_of
 from relook.project.outcome.moves import ReasonCount
@@ -252,17 +255,16 @@ def test_the_audit_sentence_carries_its_counts_share_and_interval(tmp_path):
     first, second = found.result.strata
     assert (first.n_items, first.n_ruled, first.n_otherwise) == (80, 4, 1)
     assert (second.n_items, second.n_ruled, second.n_otherwise) == (20, 2, 0)
-    # Wilson's interval for 1 of 4, by the formula in Newcombe (1998), method 3.
-    assert (first.low, first.high) == (
-        pytest.approx(0.0456, abs=5e-5),
-        pytest.approx(0.6994, abs=5e-5),
-    )
+    # 1 of 4 drawn from 80: one such item at least, and 63 at most, by the tails of scipy.
+    tails = [hypergeom.sf(0, 80, 1, 4), hypergeom.cdf(1, 80, 63, 4), hypergeom.cdf(1, 80, 64, 4)]
+    assert min(tails[:2]) > 0.025 > tails[2]
+    assert (first.low, first.high) == (1 / 80, 63 / 80)
     assert found.result.share_ruled_otherwise == pytest.approx(0.8 / 4)
     low, high = found.result.low, found.result.high
     assert sentences.audit_sentence(found) == (
         "Audit of round 1: 1 of 6 ruled items (6 drawn) ruled otherwise than they would be "
         "released. Weighed by the sizes of the strata that is 20.0% of the 100 items that would be "
-        f"released without a decision (95% interval {low:.1%} to {high:.1%})."
+        f"released with a label but no decision (95% interval {low:.1%} to {high:.1%})."
     )
     cautions = sentences.audit_cautions(found, held.n_sent_since_audit)
     assert cautions[0].startswith("1 of them is a split or waits for a second adjudicator")
@@ -478,23 +480,46 @@ def test_the_latest_audit_with_a_ruling_speaks_and_later_rows_are_told(tmp_path)
     )
 
 
-def test_a_tied_audit_item_cannot_be_ruled_otherwise(tmp_path):
-    """It would be released blank; that it was counted so is said."""
-    labels = {**numbered(4), "x1": [("c1", "a"), ("c2", "b")]}
+def test_ties_stay_out_of_the_audit_unless_a_rule_gives_them_a_label(tmp_path):
+    """Released blank they are on neither side of the share; by a rule they are judged like any.
+
+    By hand, in one stratum of 4 items with a majority and 2 that tie: of the three ruled ones with
+    a majority one is ruled otherwise, 1/3 of 4; with the ties at "b" it is 1/3 + 1 of 2 ruled "a",
+    that is 2/5 of 6.
+    """
+    majority = {f"m{at}": [("c1", "a"), ("c2", "b"), ("c3", "a")] for at in range(4)}
+    tied = {f"x{at}": [("c1", "a"), ("c2", "b")] for at in range(2)}
+    labels = {**numbered(4), **majority, **tied}
     project = make_project(tmp_path / "p", labels)
+    audit = {"m0": "a", "m1": "b", "m2": "a", "x0": "a", "x1": "b"}
     send_round(
         project,
         labels,
-        {"x1": "audit"},
-        strata={"not queued": (1, 1)},
-        stratum_of={"x1": "not queued"},
+        dict.fromkeys(audit, "audit"),
+        strata={"not queued": (6, 5, 2, 2)},
+        stratum_of=dict.fromkeys(audit, "not queued"),
     )
-    rule(project, labels, [Ruling("x1", "a", kind="audit")])
+    rule(project, labels, [Ruling(item, label, kind="audit") for item, label in audit.items()])
+    loaded = load(project)
     (found,) = only(rescored(project)).audits
-    assert found.result.share_ruled_otherwise == 0
-    assert sentences.audit_cautions(found, 0) == (
-        "1 audit item whose labels tie counts as not ruled otherwise: ties are released blank.",
+    (part,) = found.result.strata
+    assert (part.n_items, part.n_ruled, part.n_otherwise) == (4, 3, 1)
+    assert (found.n_ties, found.n_left_out) == (2, 2)
+    assert found.result.share_ruled_otherwise == pytest.approx(1 / 3)
+    assert sentences.audit_cautions(found, 0)[0] == (
+        "Not counted: 2 items whose labels tie, 2 of them ruled on in the audit; without a decision "
+        "they are released blank."
     )
+    (by_rule,) = audits_of(
+        loaded,
+        "topic",
+        read_rounds(project),
+        settlements(loaded, read_record(project)),
+        {"x0": "b", "x1": "b"},
+    )
+    (part,) = by_rule.result.strata
+    assert (part.n_items, part.n_ruled, part.n_otherwise) == (6, 5, 2)
+    assert (by_rule.n_ties, by_rule.n_left_out) == (2, 0)
 
 
 def test_numbers_within_the_tolerance_are_upheld(tmp_path):

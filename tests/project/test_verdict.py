@@ -61,9 +61,9 @@ def test_a_coder_is_named(tmp_path):
             # Each of the 12 ordered pairs of labels about as often as any other.
             labels[3] = ("d", "pqrs"["pqrs".index(labels[3][1]) - 1 - int(rng.integers(3))])
     said = verdict(one(tmp_path, table))
-    assert said.startswith("Weight lies in coder d (one side of 100% of the disagreement with 25% ")
+    assert said.startswith("Weight lies in coder d (50% of the disagreement with 25% of the ")
     assert "alpha without them 1.000 over 120 items" in said
-    assert said.endswith("so ask before judging).")
+    assert said.endswith(": ask how they read the instructions before judging).")
 
 
 def test_few_items_are_named(tmp_path):

@@ -71,11 +71,15 @@ def send_round(
     labels: Labels,
     sent: Mapping[str, str],
     *,
-    strata: Mapping[str, tuple[int, int]] | None = None,
+    strata: Mapping[str, tuple[int, ...]] | None = None,
     number: int = 1,
     stratum_of: Mapping[str, str] | None = None,
 ) -> Round:
-    """Write round.json; `sent` gives each item's kind, `strata` sizes and draws of each stratum."""
+    """Write round.json; `sent` gives each item's kind.
+
+    `strata` gives the size and the draws of each stratum, and where there are any the ties among
+    either.
+    """
     digest = hashlib.sha256((project.root / "labels.csv").read_bytes()).hexdigest()
     held = Round(
         number=number,
@@ -102,8 +106,12 @@ def send_round(
             ),
         ),
         strata=tuple(
-            RoundStratum(variable="topic", stratum=name, n_items=size, n_drawn=drawn)
-            for name, (size, drawn) in (strata or {}).items()
+            RoundStratum(
+                **dict(zip(("n_items", "n_drawn", "n_tied", "n_drawn_tied"), counts, strict=False)),
+                variable="topic",
+                stratum=name,
+            )
+            for name, counts in (strata or {}).items()
         ),
         worksheets=(),
         rows=tuple(

@@ -16,7 +16,7 @@ import numpy as np
 
 from relook.core.agreement import Agreement
 from relook.core.exact import BoolArray, IntArray
-from relook.core.proportions import clean_bound, weighted_interval, wilson_interval
+from relook.core.proportions import exact_interval, weighted_interval
 from relook.errors import RelookError
 
 Stratum = Literal["unanimous", "not queued", "single"]
@@ -64,12 +64,16 @@ class AuditDraw:
         Items of each stratum, at the draw.
     drawn : dict of str to int
         Of these, the audit items.
+    tied, drawn_tied : dict of str to int
+        Of each of these, the items that have no consensus label to be released with.
     """
 
     item_index: IntArray
     stratum: IntArray
     sizes: dict[Stratum, int]
     drawn: dict[Stratum, int]
+    tied: dict[Stratum, int]
+    drawn_tied: dict[Stratum, int]
 
     @property
     def chances(self) -> dict[Stratum, float]:
@@ -88,15 +92,13 @@ class StratumResult:
     ----------
     stratum : str
     n_items : int
-        Items of the stratum at the draw.
+        Items of the stratum, as `estimate` was given them.
     n_ruled : int
         Audit items with a ruling.
     n_otherwise : int
         Of these, ruled otherwise than they would have been released.
     share, low, high : float or None
-        n_otherwise/n_ruled with Wilson's interval; None without a ruling.
-    bound_if_clean : float or None
-        Where nothing was ruled otherwise: the exact one-sided bound at the same level.
+        n_otherwise/n_ruled with its exact interval; None without a ruling.
     """
 
     stratum: Stratum
@@ -106,7 +108,6 @@ class StratumResult:
     share: float | None
     low: float | None
     high: float | None
-    bound_if_clean: float | None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -198,7 +199,12 @@ def allocate(sizes: IntArray, n: int) -> IntArray:
 
 
 def draw_audit(
-    stratum: IntArray, n: int, rng: np.random.Generator, *, item_hash: IntArray | None = None
+    stratum: IntArray,
+    n: int,
+    rng: np.random.Generator,
+    *,
+    item_hash: IntArray | None = None,
+    tied: BoolArray | None = None,
 ) -> AuditDraw:
     """Draw audit items at random from each stratum.
 
@@ -211,6 +217,8 @@ def draw_audit(
     rng : numpy.random.Generator
     item_hash : int array of shape (n_items,), optional
         A keyed hash of each item's id, so that the draw does not depend on the order of the file.
+    tied : bool array of shape (n_items,), optional
+        Items whose labels tie. They are drawn like any other, and counted.
 
     Returns
     -------
@@ -218,7 +226,7 @@ def draw_audit(
     """
     if n < 0:
         raise RelookError(f"`n` must be 0 or more; got {n}")
-    sizes = np.bincount(stratum[stratum >= 0], minlength=len(STRATA))
+    sizes = _sizes(stratum)
     given = allocate(sizes, n)
     drawn = []
     for code, k in enumerate(given.tolist()):
@@ -227,12 +235,23 @@ def draw_audit(
             items = items[np.argsort(item_hash[items], kind="stable")]
         drawn.append(rng.choice(items, size=k, replace=False) if k else items[:0])
     every = rng.permutation(np.concatenate(drawn))
+    tied = np.zeros(stratum.size, dtype=bool) if tied is None else np.asarray(tied, dtype=bool)
     return AuditDraw(
         item_index=every,
         stratum=stratum[every],
-        sizes=dict(zip(STRATA, sizes.tolist(), strict=True)),
-        drawn=dict(zip(STRATA, given.tolist(), strict=True)),
+        sizes=_by_stratum(sizes),
+        drawn=_by_stratum(given),
+        tied=_by_stratum(_sizes(stratum[tied])),
+        drawn_tied=_by_stratum(_sizes(stratum[every][tied[every]])),
     )
+
+
+def _sizes(stratum: IntArray) -> IntArray:
+    return np.bincount(stratum[stratum >= 0], minlength=len(STRATA))
+
+
+def _by_stratum(counts: IntArray) -> dict[Stratum, int]:
+    return dict(zip(STRATA, counts.tolist(), strict=True))
 
 
 def estimate(
@@ -247,9 +266,9 @@ def estimate(
     Parameters
     ----------
     sizes : mapping of stratum to int
-        Items of each stratum at the draw.
+        Items of each stratum that the share is of, each as likely to be drawn as any other.
     ruled : mapping of stratum to int
-        Audit items with a ruling; left-out strata have none.
+        Of these, the audit items with a ruling; left-out strata have none.
     otherwise : mapping of stratum to int
         Of these, ruled otherwise.
     confidence_level : float
@@ -285,11 +304,10 @@ def estimate(
             undefined_because=because,
             confidence_level=confidence_level,
         )
-    total = sum(result.n_items for result in strata)
     share, low, high = weighted_interval(
         [result.n_otherwise for result in strata],
         [result.n_ruled for result in strata],
-        [result.n_items / total for result in strata],
+        [result.n_items for result in strata],
         confidence_level=confidence_level,
     )
     return AuditResult(
@@ -307,7 +325,7 @@ def _stratum_result(
 ) -> StratumResult:
     interval: tuple[float | None, float | None] = (None, None)
     if n:
-        interval = wilson_interval(found, n, confidence_level=confidence_level)
+        interval = exact_interval(found, n, size, confidence_level=confidence_level)
     return StratumResult(
         stratum=name,
         n_items=size,
@@ -316,7 +334,4 @@ def _stratum_result(
         share=found / n if n else None,
         low=interval[0],
         high=interval[1],
-        bound_if_clean=clean_bound(n, confidence_level=confidence_level)
-        if n and not found
-        else None,
     )

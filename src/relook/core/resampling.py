@@ -1,9 +1,10 @@
 """Intervals for alpha, by resampling items with all their labels.
 
 Labels of one item depend on each other, so items (or the clusters they come in) are what is drawn
-with replacement. D_o, D_e and ordinal differences are computed anew in each resample: holding D_e
-fixed makes intervals far too narrow (Zapf et al. 2016), and with few items even these cover less
-often than they say (Hughes 2022). Bounds are percentiles.
+with replacement, as Zapf et al. (2016) do for nominal data. D_o, D_e and ordinal differences are
+computed anew in each resample, since all of them depend on the items drawn. Bounds are percentiles.
+The interval takes items for a random sample, coders for fixed, and missing labels for missing at
+random. With few items it covers less often than it says (Hughes 2022).
 
 References
 ----------
@@ -30,7 +31,7 @@ RESAMPLES = 2_000
 CONFIDENCE_LEVEL = 0.95
 #: Above this share of undefined resamples no interval is given.
 MOST_UNDEFINED = 0.05
-#: Below this number of pairable items (or clusters) an interval comes with a warning.
+#: Below this number of pairable items (or clusters) an interval comes with a warning. Our choice.
 FEW_ITEMS = 30
 #: Numbers held at once in a block of resamples.
 BLOCK = 4_000_000

@@ -19,6 +19,7 @@ from relook.cli.screens.layout import (
     stacked,
 )
 from relook.cli.screens.recode import compared_screen
+from relook.project.figures.interval_words import interval_draws, interval_ends
 from relook.project.outcome import rescore_sentences as sentences
 from relook.project.outcome.codings_compared import CodingsCompared
 from relook.project.outcome.moves import CoderStanding, Move
@@ -129,12 +130,9 @@ def _interval(scored: VariableRescore) -> str:
     result = scored.interval
     if result.interval is None:
         return f"No interval for alpha: {result.none_because}."
-    held = result.interval
-    said = (
-        f"Alpha's {held.confidence_level:.0%} interval: {held.low:.3f} to {held.high:.3f} "
-        f"({held.resamples:,} resamples of items, seed {held.seed})."
-    )
-    return f"{said} {result.warning}" if result.warning else said
+    draws = interval_draws(result.interval, scored.resampled_by)
+    said = f"Alpha's {interval_ends(result.interval)} ({draws})."
+    return f"{said} Caution: {result.warning}." if result.warning else said
 
 
 def _moves(scored: VariableRescore) -> list[RenderableType]:
@@ -195,11 +193,11 @@ def _audit(scored: VariableRescore) -> list[RenderableType]:
             count(part.n_otherwise),
             percent(part.share) if part.share is not None else "",
             "" if part.low is None else f"{percent(part.low)} to {percent(part.high)}",
-            "" if part.bound_if_clean is None else f"below {percent(part.bound_if_clean)}",
         )
         for part in audit.result.strata
     ]
-    headers = ("items that are", "in all", "ruled", "otherwise", "share", "interval", "if clean")
+    level = f"{audit.result.confidence_level:.0%} interval"
+    headers = ("items that are", "in all", "ruled", "otherwise", "share", level)
     parts += [
         small_table(headers, rows, numbers=(1, 2, 3, 4)),
         note(sentences.audit_sentence(audit)),

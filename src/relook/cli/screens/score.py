@@ -21,6 +21,7 @@ from relook.cli.screens.layout import (
     stacked,
 )
 from relook.cli.screens.score_sources import sources
+from relook.project.figures.interval_words import interval_draws, interval_ends
 from relook.project.figures.label_mergers import CAUTION, MergedScore
 from relook.project.figures.score_object import best_merger_rows, changed_warning, selected_row
 from relook.project.figures.score_object import variable_warnings as warnings_of
@@ -113,7 +114,7 @@ def _variable(score: Score, scored: VariableScore, n_rows: int) -> list[Renderab
                 (
                     "observed disagreement",
                     amount(agreement.observed_disagreement),
-                    "D_o, mean difference between labels of one item",
+                    "D_o, mean difference δ² between labels of one item",
                 ),
                 (
                     "expected disagreement",
@@ -181,15 +182,8 @@ def _interval_text(scored: VariableScore) -> str:
         return ""
     if result.interval is None:
         return f"no interval: {result.none_because}"
-    held = result.interval
-    drawn = "items" if scored.clustered_by is None else f'"{scored.clustered_by}" as clusters'
-    text = (
-        f"{held.confidence_level:.0%} interval {held.low:.3f} to {held.high:.3f} "
-        f"({held.resamples:,} resamples of {drawn}, seed {held.seed})"
-    )
-    if held.undefined_resamples:
-        text += f"; {counted(held.undefined_resamples, 'resample')} undefined and left out"
-    return text
+    draws = interval_draws(result.interval, scored.resampled_by)
+    return f"{interval_ends(result.interval)} ({draws})"
 
 
 def _merged(scored: VariableScore, merged: MergedScore) -> list[RenderableType]:

@@ -91,7 +91,6 @@ def _coders(scored: VariableScore, n_rows: int) -> list[RenderableType]:
             percent(row["share_of_labels"]),
             percent(row["share"]),
             bar(row["share"], most),
-            percent(row["involved"]),
             coefficient(row["own_alpha"]),
             *(
                 (coefficient(row["alpha_without"]), count(row["n_pairable_items_without"]))
@@ -107,11 +106,10 @@ def _coders(scored: VariableScore, n_rows: int) -> list[RenderableType]:
         "of labels",
         "of D_o",
         "",
-        "one side of",
         "own alpha",
         *(("alpha without", "over items") if without else ()),
     )
-    numbers = (1, 2, 3, 5, 6, *((7, 8) if without else ()))
+    numbers = (1, 2, 3, 5, *((6, 7) if without else ()))
     parts = [small_table(headers, shown, numbers=numbers), *_left(rows, n_rows, "coder")]
     if not without:
         parts.append(note(f"Alpha without each coder is left out: {scored.no_without_because}."))
@@ -231,11 +229,14 @@ def _labels(scored: VariableScore, n_rows: int) -> list[RenderableType]:
         "label",
         "uses",
         "of labels",
-        "one side of",
+        "party to",
         "alone: alpha",
         *((shortened(coder, 8) for coder in coders) if by_coder else ()),
     )
-    said = "“alone”: nominal alpha of the label against all others as one."
+    said = (
+        "“party to”: the part of D_o between this label and any other. “alone”: nominal alpha of "
+        "the label against all others as one."
+    )
     if by_coder:
         said += " By coder: share of their labels."
     elif len(coders) > _COLUMNS:

@@ -87,12 +87,18 @@ class RoundVariable:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class RoundStratum:
-    """Items that would be released without a decision, and how many were drawn for the audit."""
+    """Items that would be released without a decision, and how many were drawn for the audit.
+
+    `n_tied` of the `n_items`, and `n_drawn_tied` of those drawn, have labels that tie, and so no
+    label to be released with.
+    """
 
     variable: str
     stratum: str
     n_items: int
     n_drawn: int
+    n_tied: int = 0
+    n_drawn_tied: int = 0
 
 
 def stratum_of(name: str) -> Stratum:

@@ -42,7 +42,7 @@ def _variable_row(scored: VariableScore) -> Row:
         "expected_disagreement": agreement.expected_disagreement,
         "interval": None
         if interval is None
-        else {**asdict(interval), "resampled_by": scored.clustered_by or "item"},
+        else {**asdict(interval), "resampled_by": scored.resampled_by or "item"},
         "no_interval_because": result.none_because,
         "n_items": agreement.n_items,
         "n_pairable_items": agreement.n_pairable_items,

@@ -99,7 +99,7 @@ class VariableScore:
     contributions : float array of shape (n_items,)
     consensus : Consensus
     interval : IntervalResult
-    clustered_by : str or None
+    resampled_by : str or None
         The column whose groups of items were drawn for the interval.
     coders : Parts or None
         None where the table holds counts without coders.
@@ -127,7 +127,7 @@ class VariableScore:
     contributions: FloatArray
     consensus: Consensus
     interval: IntervalResult
-    clustered_by: str | None
+    resampled_by: str | None
     coders: Parts | None
     without: WithoutCoder | None
     no_without_because: str | None
@@ -267,7 +267,6 @@ def _score_variable(
     selected = ordering.ranking.items_with(position, ordering.selection.n_items)
     no_without, no_pairs = _left_out(agreement)
     label_pairs = label_pair_parts(agreement)
-    source = loaded.project.settings.items
     return VariableScore(
         held=held,
         coder_names=loaded.labels.coders,
@@ -282,7 +281,7 @@ def _score_variable(
             cluster_of_item=clusters_of(loaded),
             seed=seed,
         ),
-        clustered_by=None if source is None else source.resample_by,
+        resampled_by=resampled_by(loaded),
         coders=None if agreement.labels.coder_index is None else coder_parts(agreement),
         without=None if no_without else alpha_without_coder(agreement),
         no_without_because=no_without,
@@ -311,12 +310,16 @@ def _left_out(agreement: Agreement) -> tuple[str | None, str | None]:
     return TOO_MANY_CODERS if too_long else None, TOO_MANY_PAIRS if too_many else None
 
 
+def resampled_by(loaded: Loaded) -> str | None:
+    """Return the column whose clusters are drawn whole for intervals; None where items are."""
+    source = loaded.project.settings.items
+    return None if loaded.items is None or source is None else source.resample_by
+
+
 def clusters_of(loaded: Loaded) -> IntArray | None:
     """Return the cluster of each item where the settings name a column to resample by."""
-    source = loaded.project.settings.items
-    if loaded.items is None or source is None or source.resample_by is None:
-        return None
-    return groups_of(loaded, source.resample_by)[0]
+    column = resampled_by(loaded)
+    return None if column is None else groups_of(loaded, column)[0]
 
 
 def _groups(loaded: Loaded, agreement: Agreement) -> tuple[GroupScore, ...]:

@@ -11,6 +11,7 @@ import numpy as np
 
 from relook.core.agreement import Agreement
 from relook.core.resampling import FEW_ITEMS, Interval
+from relook.errors import listed
 from relook.project.figures.scoring import VariableScore
 
 #: Customary levels (Krippendorff 2004, pp. 241–243).
@@ -20,8 +21,8 @@ TENTATIVE = 0.667
 #: Where weight lies: nothing is said with fewer disputed items or coders than these.
 LEAST_DISPUTED_ITEMS = 20
 LEAST_CODERS = 3
-#: A coder of so many labels or more stands out who is involved in more of the disagreement than
-#: this many times what their labels would make it, and whose leaving lifts alpha so far.
+#: A coder of so many labels or more stands out whose part of the disagreement is more than this
+#: many times their part of the labels, and whose leaving lifts alpha so far.
 LEAST_LABELS_OF_A_CODER = 20
 CODER_TIMES = 1.2
 CODER_LIFT = 0.03
@@ -96,9 +97,9 @@ def verdict(scored: VariableScore) -> str | None:
     1. A pair of labels, which speaks of the instructions: among three labels in use or more, the
        heaviest pair carries 20 % of D_o or more, 1.5 times the next pair's share or more, 1.5 times
        its share of D_e or more, in 10 items or more.
-    2. A coder with 20 labels or more who is involved in more than 1.2 times what their labels would
-       make it, and without whom alpha is higher by .03 or more. Of several the one without whom it
-       is highest.
+    2. A coder with 20 labels or more whose part of D_o is more than 1.2 times their part of the
+       labels, and without whom alpha is higher by .03 or more. Of several, figures are given of the
+       one without whom it is highest; the others are named.
     3. Items: half of D_o lies in 15 % of the disputed items or fewer.
 
     The first and the third are left out where alpha's interval does not lie above 0, for labels no
@@ -144,11 +145,10 @@ def _of_coder(scored: VariableScore) -> str | None:
     coders, without, alpha = scored.coders, scored.without, scored.agreement.alpha
     if coders is None or without is None or alpha is None:
         return None
-    # A pair has two sides, so a coder like the others is involved in twice their share of labels.
     times = np.divide(
-        coders.involved,
-        2 * coders.share_of_labels,
-        out=np.zeros_like(coders.involved),
+        coders.share,
+        coders.share_of_labels,
+        out=np.zeros_like(coders.share),
         where=coders.share_of_labels > 0,
     )
     lift = np.nan_to_num(without.alpha - alpha, nan=-1.0)
@@ -158,11 +158,13 @@ def _of_coder(scored: VariableScore) -> str | None:
     if not bool(stands_out.any()):
         return None
     coder = int(np.argmax(np.where(stands_out, lift, -np.inf)))
+    others = [scored.coder_names[at] for at in np.flatnonzero(stands_out).tolist() if at != coder]
+    likewise = f"; the same holds of {listed(others)}" if others else ""
     return (
-        f"coder {scored.coder_names[coder]} (one side of {coders.involved[coder]:.0%} of the "
-        f"disagreement with {coders.share_of_labels[coder]:.0%} of the labels; alpha without them "
-        f"{without.alpha[coder]:.3f} over {int(without.n_pairable_items[coder]):,} items: a "
-        "misunderstanding or carelessness, so ask before judging)"
+        f"coder {scored.coder_names[coder]} ({coders.share[coder]:.0%} of the disagreement with "
+        f"{coders.share_of_labels[coder]:.0%} of the labels; alpha without them "
+        f"{without.alpha[coder]:.3f} over {int(without.n_pairable_items[coder]):,} items{likewise}"
+        ": ask how they read the instructions before judging)"
     )
 
 

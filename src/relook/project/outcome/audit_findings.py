@@ -3,6 +3,10 @@
 The strata are those of the draw, with the sizes that the round recorded. Where several rounds drew
 audit items the latest with a ruling speaks; earlier draws came from other strata and are given
 apart.
+
+The share is of items that would be released with a label. Items whose labels tie are released
+blank unless a rule for ties is asked for: without one they are left out of both sides, since a
+blank cannot be ruled otherwise; with one they are judged by the label that the rule gives them.
 """
 
 from __future__ import annotations
@@ -39,7 +43,9 @@ class AuditFindings:
         Ruled otherwise by one adjudicator against another, or against unanimous coders with nobody
         to confirm it yet. They count as ruled otherwise.
     n_ties : int
-        Ruled items whose labels tie: released blank, they cannot be ruled otherwise.
+        Ruled items whose labels tie. They count only where a rule gives them a label.
+    n_left_out : int
+        Items that would be released without a decision and blank: not in `result`.
     result : AuditResult
     """
 
@@ -48,6 +54,7 @@ class AuditFindings:
     n_drawn: int
     n_unresolved: int
     n_ties: int
+    n_left_out: int
     result: AuditResult
 
 
@@ -82,6 +89,7 @@ def audits_of(
     name: str,
     rounds: Sequence[Round],
     settled: Mapping[tuple[str, str], Settlement],
+    label_of_tie: Mapping[str, str] | None = None,
 ) -> tuple[AuditFindings, ...]:
     """Work out what each round's audit found on one variable, latest first.
 
@@ -91,6 +99,8 @@ def audits_of(
     name : str
     rounds : sequence of Round
     settled : mapping of (item, variable) to Settlement
+    label_of_tie : mapping of str to str, optional
+        The label that a rule gives each item whose labels tie; None: they are released blank.
 
     Returns
     -------
@@ -98,7 +108,7 @@ def audits_of(
         Of the rounds that drew audit items of this variable; those without any ruling come last.
     """
     found = [
-        _audit(loaded, name, held, settled)
+        _audit(loaded, name, held, settled, label_of_tie)
         for held in rounds
         if any(each.variable == name and each.n_drawn for each in held.strata)
     ]
@@ -128,18 +138,21 @@ def pooled(audits: Sequence[AuditFindings]) -> PooledAudit:
         return PooledAudit(
             share_ruled_otherwise=None, low=None, high=None, undefined_because=because
         )
-    total = sum(part.n_items for _, part in strata)
     share, low, high = weighted_interval(
         [part.n_otherwise for _, part in strata],
         [part.n_ruled for _, part in strata],
-        [part.n_items / total for _, part in strata],
+        [part.n_items for _, part in strata],
         confidence_level=CONFIDENCE_LEVEL,
     )
     return PooledAudit(share_ruled_otherwise=share, low=low, high=high, undefined_because=None)
 
 
 def _audit(
-    loaded: Loaded, name: str, held: Round, settled: Mapping[tuple[str, str], Settlement]
+    loaded: Loaded,
+    name: str,
+    held: Round,
+    settled: Mapping[tuple[str, str], Settlement],
+    label_of_tie: Mapping[str, str] | None,
 ) -> AuditFindings:
     rows: dict[str, RoundRow] = {}
     for row in held.rows:
@@ -153,16 +166,25 @@ def _audit(
         settlement = settled.get((item, name))
         if settlement is None or settlement.state == "open" or item not in stands:
             continue
-        stratum = stratum_of(row.stratum)
-        ruled[stratum] += 1
         label = stands[item]
         if label is None:
             n_ties += 1
-        elif is_otherwise(settlement, label, _tolerance(loaded, name)):
+            if label_of_tie is None:
+                continue
+            label = _plain(label_of_tie[item], loaded.labels.variables[name].variable.decimal)
+        stratum = stratum_of(row.stratum)
+        ruled[stratum] += 1
+        if is_otherwise(settlement, label, _tolerance(loaded, name)):
             otherwise[stratum] += 1
             n_unresolved += settlement.state in ("split", "unconfirmed")
+    strata = [each for each in held.strata if each.variable == name]
+    left_out = {each.stratum: each.n_tied if label_of_tie is None else 0 for each in strata}
     sizes = {
-        stratum_of(each.stratum): each.n_items for each in held.strata if each.variable == name
+        # Labels that changed since the draw may have untied more of the audit items.
+        stratum_of(each.stratum): max(
+            each.n_items - left_out[each.stratum], ruled[stratum_of(each.stratum)]
+        )
+        for each in strata
     }
     return AuditFindings(
         variable=name,
@@ -170,6 +192,7 @@ def _audit(
         n_drawn=len(rows),
         n_unresolved=n_unresolved,
         n_ties=n_ties,
+        n_left_out=sum(left_out.values()),
         result=estimate(sizes, ruled, otherwise, confidence_level=CONFIDENCE_LEVEL),
     )
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from relook.project.figures.interval_words import interval_draws, interval_ends
 from relook.project.outcome import rescore_sentences as sentences
 from relook.project.outcome.audit_findings import pooled
 from relook.project.outcome.rescoring import Rescore, VariableRescore
@@ -46,11 +47,10 @@ def _figures(held: Rescore, scored: VariableRescore) -> list[Figure]:
     interval = scored.interval.interval
     said = given.undefined_because or f"{given.n_pairable_items:,} items with two labels or more"
     if interval is not None:
-        said += (
-            f"; {interval.confidence_level:.0%} interval {interval.low:.3f} to "
-            f"{interval.high:.3f}, "
-            f"{interval.resamples:,} resamples of items, seed {interval.seed}"
-        )
+        draws = interval_draws(interval, scored.resampled_by)
+        said += f"; {interval_ends(interval)}, {draws}"
+    if scored.interval.warning is not None:
+        said += f". Caution: {scored.interval.warning}."
     own = f"{after.n_settled:,} items settled, {after.n_cannot_be_coded:,} cannot be coded"
     rows: list[tuple[str, Value, str]] = [
         (sentences.name_of_alpha(held), given.alpha, said),

@@ -31,7 +31,8 @@ CONCLUSIONS = {
 }
 
 INDEPENDENT = (
-    "Alpha is of the labels that coders made independently of each other; decisions do not enter."
+    "Alpha is of the labels as they were before the first round, and a reliability only if coders "
+    "made them independently of each other; decisions do not enter."
 )
 NOT_INDEPENDENT = (
     "The label files changed after the first round was sent, so these labels may have been changed "
@@ -157,8 +158,8 @@ def audit_sentence(held: AuditFindings) -> str:
         return f"{head} No share is given for the release: {result.undefined_because}."
     return (
         f"{head} Weighed by the sizes of the strata that is "
-        f"{result.share_ruled_otherwise:.1%} of the {total:,} items that would be released without "
-        f"a decision ({result.confidence_level:.0%} interval {result.low:.1%} to "
+        f"{result.share_ruled_otherwise:.1%} of the {total:,} items that would be released with a "
+        f"label but no decision ({result.confidence_level:.0%} interval {result.low:.1%} to "
         f"{result.high:.1%})."
     )
 
@@ -172,12 +173,10 @@ def audit_cautions(held: AuditFindings, n_sent_since: int) -> tuple[str, ...]:
             f"{held.n_unresolved:,} of them {verb} for a second adjudicator and may yet turn out a "
             "slip."
         )
-    if held.n_ties:
+    if held.n_left_out:
         said.append(
-            f"{_counted(held.n_ties, 'audit item')} whose labels tie "
-            f"{'counts' if held.n_ties == 1 else 'count'} as not ruled otherwise: ties are "
-            "released "
-            "blank."
+            f"Not counted: {_counted(held.n_left_out, 'item')} whose labels tie, {held.n_ties:,} "
+            "of them ruled on in the audit; without a decision they are released blank."
         )
     if n_sent_since:
         said.append(

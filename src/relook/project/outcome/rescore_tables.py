@@ -148,6 +148,7 @@ def audit_row(audit: AuditFindings) -> Row:
         "n_drawn": audit.n_drawn,
         "n_unresolved": audit.n_unresolved,
         "n_ties": audit.n_ties,
+        "n_left_out": audit.n_left_out,
         "strata": stratum_rows(audit),
         "share_ruled_otherwise": result.share_ruled_otherwise,
         "low": result.low,

@@ -22,7 +22,7 @@ from relook.project.archive.record import Record, read_record, stale_decisions
 from relook.project.archive.recorded import Recorded
 from relook.project.archive.rounds import Round, read_rounds
 from relook.project.archive.settlements import settlements, tolerances
-from relook.project.figures.scoring import clusters_of
+from relook.project.figures.scoring import clusters_of, resampled_by
 from relook.project.outcome.audit_findings import AuditFindings, audited_items, audits_of
 from relook.project.outcome.corrected import Corrected, correct
 from relook.project.outcome.moves import (
@@ -74,6 +74,8 @@ class VariableRescore:
     corrected : Corrected
     interval : IntervalResult
         Of alpha before; there is none of the change.
+    resampled_by : str or None
+        The column whose clusters were drawn for it; None where items were.
     states : dict of str to int
         How many items stand how, every state of `STATES` among them.
     n_waiting : int
@@ -99,6 +101,7 @@ class VariableRescore:
 
     corrected: Corrected
     interval: IntervalResult
+    resampled_by: str | None
     states: dict[str, int]
     n_waiting: int
     n_adjudicators: int
@@ -206,6 +209,7 @@ def rescore_labels(
     seed: int,
     resamples: int = RESAMPLES,
     confidence_level: float = CONFIDENCE_LEVEL,
+    labels_of_ties: Mapping[str, Mapping[str, str]] | None = None,
 ) -> Rescore:
     """Compare labels before and after a record's decisions, whatever was checked before.
 
@@ -218,6 +222,9 @@ def rescore_labels(
         As `check_independence` returned it.
     seed, resamples, confidence_level
         As for `rescore`.
+    labels_of_ties : mapping of str to mapping of str to str, optional
+        By variable and item, the label that a rule gives it where labels tie; the audit judges
+        these items by it, and leaves them out without a rule.
     """
     settled = settlements(loaded, record)
     stale, gone = _stale(loaded, record, settled)
@@ -225,7 +232,15 @@ def rescore_labels(
         loaded=loaded,
         rounds=tuple(rounds),
         variables=tuple(
-            _variable(loaded, name, rounds, settled, seed, resamples, confidence_level)
+            _variable(
+                loaded,
+                name,
+                settled,
+                audits_of(loaded, name, rounds, settled, (labels_of_ties or {}).get(name)),
+                interval_of(loaded, name, seed, resamples, confidence_level),
+                rounds=rounds,
+                seed=seed,
+            )
             for name in loaded.agreements
         ),
         changed_files=changed,
@@ -238,23 +253,24 @@ def rescore_labels(
 def _variable(
     loaded: Loaded,
     name: str,
-    rounds: Sequence[Round],
     settled: Mapping[tuple[str, str], Settlement],
+    audits: tuple[AuditFindings, ...],
+    interval: IntervalResult,
+    *,
+    rounds: Sequence[Round],
     seed: int,
-    resamples: int,
-    confidence_level: float,
 ) -> VariableRescore:
     corrected = correct(loaded, name, settled)
     own = {item: held for (item, variable), held in settled.items() if variable == name}
     counts: Counter[str] = Counter(held.state for held in own.values())
     audited = audited_items(rounds, name)
     sent = {row.item for held in rounds for row in held.rows if row.variable == name}
-    audits = audits_of(loaded, name, rounds, settled)
     latest = audits[0].round if audits else 0
     tolerance = tolerances(loaded.project.settings).get(name)
     return VariableRescore(
         corrected=corrected,
-        interval=interval_of(loaded, name, seed, resamples, confidence_level),
+        interval=interval,
+        resampled_by=resampled_by(loaded),
         states={state: counts[state] for state in STATES},
         n_waiting=len(sent - own.keys()),
         n_adjudicators=len(

@@ -6,9 +6,14 @@ from collections.abc import Mapping, Sequence
 
 from relook import __version__
 from relook.core.agreement import Agreement
-from relook.core.resampling import Interval, IntervalResult
+from relook.core.audit import SLIP_EXAMPLE
+from relook.core.doubt import SHRINK
+from relook.core.resampling import IntervalResult
 from relook.project.corrections.label_versions import LabelVersion
-from relook.project.outcome.audit_findings import AuditFindings
+from relook.project.figures.interval_words import interval_draws, interval_ends
+from relook.project.figures.scoring import resampled_by
+from relook.project.outcome import rescore_sentences as sentences
+from relook.project.outcome.audit_findings import AuditFindings, audited_items
 from relook.project.outcome.rescoring import Rescore, VariableRescore
 from relook.project.release.final_labels import FinalLabel, counts_of
 from relook.project.setup.loading import Loaded
@@ -17,20 +22,30 @@ _SOURCES = {
     "alpha": "Krippendorff, K. (2004). Content Analysis: An Introduction to Its Methodology, 2nd "
     "ed., ch. 11. Sage.",
     "interval": "Zapf, A., Castell, S., Morawietz, L. & Karch, A. (2016). Measuring inter-rater "
-    "reliability for nominal data. BMC Medical Research Methodology 16:93.",
+    "reliability for nominal data - which coefficients and confidence intervals are appropriate? "
+    "BMC Medical Research Methodology 16:93.",
+    "few": "Hughes, J. (2022). Toward improved inference for Krippendorff's Alpha agreement "
+    "coefficient. arXiv:2210.13265.",
     "audit": "Begg, C. B. & Greenes, R. A. (1983). Assessment of diagnostic tests when disease "
     "verification is subject to selection bias. Biometrics 39:207-215.",
+    "exact": "Buonaccorsi, J. P. (1987). A note on confidence intervals for proportions in finite "
+    "populations. The American Statistician 41:215-218.",
     "weighted": "Zou, G. Y., Huang, W. & Zhang, X. (2009). A note on confidence interval "
-    "estimation "
-    "for a linear function of binomial proportions. Computational Statistics & Data Analysis "
-    "53:1080-1085.",
+    "estimation for a linear function of binomial proportions. Computational Statistics & Data "
+    "Analysis 53:1080-1085.",
     "doubt": "Dawid, A. P. & Skene, A. M. (1979). Maximum likelihood estimation of observer "
     "error-rates using the EM algorithm. Applied Statistics 28:20-28.",
+    "jaccard": "Jaccard, P. (1912). The distribution of the flora in the alpine zone. New "
+    "Phytologist 11:37-50.",
     "masi": "Passonneau, R. (2006). Measuring agreement on set-valued items (MASI) for semantic "
-    "and "
-    "pragmatic annotation. LREC.",
-    "tree": "Wu, Z. & Palmer, M. (1994). Verbs semantics and lexical selection. ACL.",
+    "and pragmatic annotation. LREC.",
+    "tree": "Wu, Z. & Palmer, M. (1994). Verb semantics and lexical selection. ACL.",
 }
+_FOR_THE_AUTHORS = (
+    "For the authors to add, since no file shows it: how items were chosen; how coders were "
+    "trained and kept from each other's labels, without which alpha is no reliability; why labels "
+    "are missing, if any are; who adjudicated, and under which instructions."
+)
 _CONSENSUS = {
     "identity": "the label that more of its coders gave than any other",
     "text": "the label that more of its coders gave than any other",
@@ -85,10 +100,11 @@ def methods_statement(
         interval = intervals[name].interval
         said = [
             _labels(name, agreement, first),
-            _alpha(name, agreement, interval, first, independent),
+            _alpha(name, agreement, intervals[name], first, independent),
         ]
         used += ["interval"] if interval is not None else []
-        used += [each for each in ("masi", "tree") if agreement.function.name == each]
+        used += ["few"] if intervals[name].warning is not None else []
+        used += [each for each in ("jaccard", "masi", "tree") if agreement.function.name == each]
         if version is not None:
             said.append(_self_corrected(name, version, released))
         if again is not None and rescored is not None:
@@ -96,13 +112,14 @@ def methods_statement(
             ranks = {held.settings.get("rank_by") for held in rescored.rounds}
             used += ["doubt"] if "doubt" in ranks else []
             if again.audits:
-                said.append(_audit(again.audits[0]))
-                used += ["audit", "weighted"]
+                said.append(_audit(again.audits[0], ties))
+                if again.audits[0].result.share_ruled_otherwise is not None:
+                    used += ["audit", "exact", "weighted"]
         said.append(_released(name, released, finals, ties))
         paragraphs.append(" ".join(each for each in said if each))
     sources = [_SOURCES[name] for name in dict.fromkeys(used)]
     closing = f"Figures were computed with relook {__version__}."
-    return "\n\n".join([*paragraphs, closing, "Sources", *sources]) + "\n"
+    return "\n\n".join([*paragraphs, _FOR_THE_AUTHORS, closing, "Sources", *sources]) + "\n"
 
 
 def _labels(name: str, agreement: Agreement, first: Loaded) -> str:
@@ -120,15 +137,14 @@ def _labels(name: str, agreement: Agreement, first: Loaded) -> str:
 def _alpha(
     name: str,
     agreement: Agreement,
-    interval: Interval | None,
+    result: IntervalResult,
     first: Loaded,
     independent: bool | None,
 ) -> str:
     which = {
-        True: "of the labels that coders made independently",
+        True: "of the labels as they were before the first round of second looks",
         False: "of the labels, which changed after the first round of second looks was sent and "
-        "are "
-        "not independent,",
+        "are not independent,",
         None: "of the labels",
     }[independent]
     if agreement.alpha is None:
@@ -139,14 +155,16 @@ def _alpha(
         f"disagreement {_amount(agreement.observed_disagreement)}, expected "
         f"{_amount(agreement.expected_disagreement)}; Krippendorff 2004"
     )
-    if interval is not None:
-        said += (
-            f"; {interval.confidence_level:.0%} interval {interval.low:.3f} to "
-            f"{interval.high:.3f} from {interval.resamples:,} resamples of items with their "
-            "labels, "
-            f"seed {interval.seed}, Zapf et al. 2016"
-        )
-    return f"{said})."
+    if result.interval is None:
+        return f"{said})."
+    drawn = interval_draws(result.interval, resampled_by(first))
+    said += (
+        f"; {interval_ends(result.interval)}, {drawn}, each with all its labels, Zapf et al. 2016)."
+    )
+    said += " The interval takes items for a random sample and missing labels for missing at random"
+    said += ", and speaks of these coders alone."
+    few = "" if result.warning is None else f" Caution (Hughes 2022): {result.warning}."
+    return f"{said}{few}"
 
 
 def _self_corrected(name: str, version: LabelVersion, loaded: Loaded) -> str:
@@ -167,17 +185,18 @@ def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
     if len(reveal) == 1:
         shown = f", {_REVEALED[reveal.pop()]}" if reveal <= _REVEALED.keys() else ""
     states, after = held.states, held.corrected.after
-    audit = " and on a random audit" if held.audits else ""
     ways = [
         f"{_counted(states['settled'], 'item was', 'items were')} settled",
         f"{states['cannot be coded']:,} found impossible to code",
         f"{states['split']:,} remained split",
     ]
+    by = _counted(held.n_adjudicators, "adjudicator", "adjudicators")
     said = [
-        (
-            f"{_counted(held.n_adjudicators, 'adjudicator', 'adjudicators')} ruled on items chosen "
-            f"by {_chosen(rescored)}{audit}{shown}: {', '.join(ways)}."
-        )
+        _sent(held, rescored),
+        f"{by} ruled on them{shown}: {', '.join(ways)}.",
+        _own_items(rescored),
+        _padded(held, rescored),
+        sentences.overlap_sentence(held.overlap),
     ]
     if states["unconfirmed"]:
         verb = "was" if states["unconfirmed"] == 1 else "were"
@@ -200,12 +219,54 @@ def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
     return said
 
 
+def _sent(held: VariableRescore, rescored: Rescore) -> str:
+    """How many items were sent for what reason, and how many nobody ruled on."""
+    sent = {row.item for each in rescored.rounds for row in each.rows if row.variable == held.name}
+    n_audit = len(audited_items(rescored.rounds, held.name))
+    if not sent:
+        return ""
+    parts = [f"{len(sent) - n_audit:,} chosen by {_chosen(rescored)}"]
+    parts += [f"{n_audit:,} drawn at random as an audit"] if n_audit else []
+    n_unruled = held.n_waiting + held.states["open"]
+    waiting = (
+        f" {_counted(n_unruled, 'of them has', 'of them have')} no ruling, and "
+        f"{'keeps its' if n_unruled == 1 else 'keep their'} coders' labels."
+        if n_unruled
+        else ""
+    )
+    items = _counted(len(sent), "item was", "items were")
+    return f"{items} sent for a second look: {' and '.join(parts)}.{waiting}"
+
+
+def _own_items(rescored: Rescore) -> str:
+    """Whether adjudicators had coded, as far as the settings name both."""
+    named = rescored.loaded.project.settings.worksheet.adjudicators
+    coded = sum(coder is not None for coder in named.values())
+    if not coded:
+        return ""
+    return (
+        f"{coded:,} of the {len(named):,} adjudicators had coded too; nobody was sent an item that "
+        "they had labelled."
+    )
+
+
+def _padded(held: VariableRescore, rescored: Rescore) -> str:
+    """That rows showed labels nobody gave, where some did."""
+    hidden = any(each.settings.get("reveal") == "labels" for each in rescored.rounds)
+    if not (hidden and audited_items(rescored.rounds, held.name)):
+        return ""
+    return (
+        "So that audit items could not be told from the others, they were shown with further "
+        "labels that nobody had given."
+    )
+
+
 def _chosen(rescored: Rescore) -> str:
     """By what the rounds ranked items, in words."""
     words = {
         "contribution": "their contribution to the disagreement",
-        "doubt": "the estimated probability that their consensus label is wrong (Dawid & Skene "
-        "1979)",
+        "doubt": "how doubtful their consensus label is under the model of Dawid & Skene (1979), "
+        f"each coder's table drawn toward the pooled one by {SHRINK:g} labels",
         "intensity": "the mean difference between two of their labels",
     }
     used = dict.fromkeys(
@@ -214,7 +275,7 @@ def _chosen(rescored: Rescore) -> str:
     return " and ".join(words[each] for each in used if each in words) or "the lead"
 
 
-def _audit(held: AuditFindings) -> str:
+def _audit(held: AuditFindings, ties: str) -> str:
     result = held.result
     ruled = sum(part.n_ruled for part in result.strata)
     otherwise = sum(part.n_otherwise for part in result.strata)
@@ -226,18 +287,32 @@ def _audit(held: AuditFindings) -> str:
     if result.share_ruled_otherwise is None:
         return f"{said}; no share is estimated, as {result.undefined_because}."
     total = sum(part.n_items for part in result.strata)
-    ties = (
-        f" {held.n_ties:,} of the ruled items had tied labels and count as not ruled otherwise, as "
-        "if ties were released blank."
-        if held.n_ties
-        else ""
-    )
-    return (
+    more = []
+    if held.n_left_out:
+        more.append(
+            f"{_counted(held.n_left_out, 'further item is', 'further items are')} released blank "
+            "because their labels tie, and not counted."
+        )
+    if held.n_ties and ties != "blank":
+        more.append(
+            f"{held.n_ties:,} of the ruled items had tied labels and were held against the label "
+            "that the rule for ties gives them."
+        )
+    if held.n_drawn > ruled + (held.n_ties if held.n_left_out else 0):
+        more.append("Audit items without a ruling are taken as missing at random.")
+    if otherwise:
+        more.append(
+            f"Adjudicators' slips count too: with {SLIP_EXAMPLE.true_share:.0%} of items wrong, "
+            f"{SLIP_EXAMPLE.slip_rate:.0%} slips would show as {SLIP_EXAMPLE.share_shown:.1%}."
+        )
+    estimated = (
         f"{said}; weighted by the sizes of the strata (Begg & Greenes 1983), an estimated "
-        f"{result.share_ruled_otherwise:.1%} of {total:,} items ({result.confidence_level:.0%} "
-        f"interval {result.low:.1%} to {result.high:.1%}; exact limits combined after Zou et al. "
-        f"2009).{ties}"
+        f"{result.share_ruled_otherwise:.1%} of the {total:,} items that are released with a "
+        f"label but no decision ({result.confidence_level:.0%} interval {result.low:.1%} to "
+        f"{result.high:.1%}; exact limits for finite strata, Buonaccorsi 1987, combined after "
+        "Zou et al. 2009)."
     )
+    return " ".join([estimated, *more])
 
 
 def _released(name: str, released: Loaded, finals: Sequence[FinalLabel], ties: str) -> str:

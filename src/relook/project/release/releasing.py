@@ -157,7 +157,14 @@ def make_release(project: Project, request: ReleaseRequest, stamp: str) -> Relea
     finals = released_labels(project, released, settled, request)
     rescored = None
     if record.decisions:
-        rescored = rescore_labels(released, rounds, record, changed, seed=request.seed)
+        rescored = rescore_labels(
+            released,
+            rounds,
+            record,
+            changed,
+            seed=request.seed,
+            labels_of_ties=_labels_of_ties(project, released, request),
+        )
     corrected = {name: correct(released, name, settled) for name in released.agreements}
     tables = corrected_tables(released, corrected)
     notes = _notes(released, rescored, finals)
@@ -205,6 +212,19 @@ def released_labels(
     # Keyed by the project's id, so that the same draw can be checked wherever the folder is.
     key = project.settings.project.encode("utf-8")
     return tuple(final_labels(released, settled, ties=request.ties, key=key))
+
+
+def _labels_of_ties(
+    project: Project, released: Loaded, request: ReleaseRequest
+) -> dict[str, dict[str, str]] | None:
+    """What the rule that was asked for would make of every tie, decided since or not."""
+    if request.ties == "blank":
+        return None
+    found: dict[str, dict[str, str]] = {name: {} for name in released.agreements}
+    for each in released_labels(project, released, {}, request):
+        if each.rule:
+            found[each.variable][each.item] = each.label
+    return found
 
 
 def final_frame(finals: Sequence[FinalLabel], names: Mapping[str, str]) -> pd.DataFrame:

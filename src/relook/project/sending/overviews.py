@@ -7,6 +7,7 @@ from collections.abc import Iterable
 from dataclasses import fields
 from typing import TypeVar
 
+from relook.project.figures.interval_words import interval_draws, interval_ends
 from relook.project.figures.item_table import item_table
 from relook.project.figures.score_tables import (
     Row,
@@ -75,15 +76,14 @@ def _rows(kind: type[_Kind], rows: Iterable[Row]) -> tuple[_Kind, ...]:
 
 def _figures(score: Score) -> list[Figure]:
     figures = []
-    for row in variable_rows(score):
-        interval = row["interval"]
-        said = row["undefined_because"] or "of independently made labels"
+    for row, scored in zip(variable_rows(score), score.variables, strict=True):
+        interval = scored.interval.interval
+        said = row["undefined_because"] or "a reliability only if coders worked independently"
         if interval is not None:
-            said += (
-                f"; {interval['confidence_level']:.0%} interval {interval['low']:.3f} to "
-                f"{interval['high']:.3f}, {interval['resamples']:,} resamples of items, seed "
-                f"{interval['seed']}"
-            )
+            draws = interval_draws(interval, scored.resampled_by)
+            said += f"; {interval_ends(interval)}, {draws}"
+            if scored.interval.warning is not None:
+                said += f". Caution: {scored.interval.warning}"
         elif row["alpha"] is not None:
             said += f"; no interval: {row['no_interval_because']}"
         name = row["variable"]

@@ -105,12 +105,13 @@ class PlannedRound:
         """The upper limit of what a clean audit says, of the worst variable; None without one.
 
         It is what `rescore` will show if no audit item is ruled otherwise: the limit weighs the
-        strata by their sizes, and so is wider than that of one sample of as many items.
+        strata by their sizes, and so is wider than that of one sample of as many items. Items
+        whose labels tie are left out, since they are released blank.
         """
         limits = [
             estimate(
-                {stratum_of(each.stratum): each.n_items for each in strata},
-                {stratum_of(each.stratum): each.n_drawn for each in strata},
+                {stratum_of(each.stratum): each.n_items - each.n_tied for each in strata},
+                {stratum_of(each.stratum): each.n_drawn - each.n_drawn_tied for each in strata},
                 {},
             ).high
             for strata in (

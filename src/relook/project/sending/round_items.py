@@ -7,10 +7,12 @@ from dataclasses import replace
 
 import numpy as np
 
+from relook.core.agreement import Agreement
 from relook.core.audit import STRATA, AuditDraw, allocate, draw_audit, stratify
 from relook.core.exact import BoolArray
 from relook.project.archive.history import History
 from relook.project.archive.rounds import RoundStratum
+from relook.project.figures.consensus_texts import consensus_for
 from relook.project.figures.ordering import Ordering, item_hashes
 from relook.project.sending.sheets import coders_of_item
 from relook.project.setup.loading import Loaded
@@ -113,10 +115,17 @@ def audit_draws(
                 int(shares[position]),
                 np.random.default_rng([seed, position]),
                 item_hash=hashes,
+                tied=_tied(loaded.agreements[name]),
             ),
         )
         for position, (name, stratum) in enumerate(strata_of.items())
     ]
+
+
+def _tied(agreement: Agreement) -> BoolArray:
+    """Items whose labels tie; those without labels do not."""
+    tied = np.append(consensus_for(agreement).tie, False)
+    return np.asarray(tied[agreement.profile_of_item], dtype=bool)
 
 
 def audit_items(
@@ -143,7 +152,12 @@ def audit_items(
         ]
         strata += [
             RoundStratum(
-                variable=name, stratum=kind, n_items=draw.sizes[kind], n_drawn=draw.drawn[kind]
+                variable=name,
+                stratum=kind,
+                n_items=draw.sizes[kind],
+                n_drawn=draw.drawn[kind],
+                n_tied=draw.tied[kind],
+                n_drawn_tied=draw.drawn_tied[kind],
             )
             for kind in STRATA
         ]
