@@ -109,3 +109,26 @@ def test_unfolding_is_bounded(rows: str) -> None:
     """Repeats that unfold into millions of cells, and repeats that are no numbers, are refused."""
     with pytest.raises(RelookError):
         open_book(ods(rows), "a.ods")
+
+
+def test_comments_are_kept_apart_from_the_text_of_their_cell() -> None:
+    """With row and column; date and author are no part of them, and none is an empty one."""
+    note = (
+        "<office:annotation><dc:creator>Ada</dc:creator><dc:date>2031-02-01</dc:date>"
+        "<text:p>not <text:span>sure</text:span></text:p><text:p>at all</text:p>"
+        "</office:annotation>"
+    ).replace("dc:", "meta:")
+    empty = "<office:annotation><text:p/></office:annotation>"
+    data = ods(
+        row(text("a", 'table:number-columns-repeated="2"'))
+        + row("<table:table-cell/>", attributes='table:number-rows-repeated="3"')
+        + row(
+            text("b"),
+            f"<table:table-cell>{note}</table:table-cell>",
+            f'<table:table-cell office:value-type="string">{empty}<text:p>c</text:p>'
+            "</table:table-cell>",
+        )
+    )
+    (sheet,) = open_book(data, "a.ods").sheets
+    assert sheet.comments == ((5, 2, "not sure\nat all"),)
+    assert [cell.text for cell in sheet.rows[4]] == ["b", "", "c"]

@@ -19,6 +19,7 @@ MOST_HOLES = 2_000_000  # empty cells to the left of full ones, and empty rows a
 LONGEST_GAP = 100_000  # empty rows between two full ones
 MOST_SHEETS = 256
 MOST_MERGED = 10_000  # merged ranges of a sheet that are remembered
+MOST_COMMENTS = 10_000  # comments of a sheet that are remembered
 
 
 def column_letters(number: int) -> str:
@@ -28,6 +29,14 @@ def column_letters(number: int) -> str:
         number, rest = divmod(number - 1, 26)
         letters = chr(65 + rest) + letters
     return letters
+
+
+def column_number(letters: str) -> int:
+    """Return the 1-based number of a column by its letters: A is 1, AA is 27."""
+    number = 0
+    for letter in letters:
+        number = number * 26 + ord(letter) - 64
+    return number
 
 
 class Meter:

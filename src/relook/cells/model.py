@@ -41,13 +41,15 @@ class Sheet:
 
     Rows may differ in length; empty rows within are kept, empty rows at the end are not. `merged`
     holds first row, first column, last row and last column, 1-based, of each merged range; its
-    value stands in its first cell.
+    value stands in its first cell. `comments` holds row, column, 1-based, and text of each comment
+    that is pinned to a cell.
     """
 
     title: str
     rows: tuple[tuple[Cell, ...], ...]
     hidden: bool = False
     merged: tuple[tuple[int, int, int, int], ...] = ()
+    comments: tuple[tuple[int, int, str], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

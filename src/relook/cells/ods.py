@@ -11,7 +11,7 @@ from __future__ import annotations
 import re
 from collections.abc import Mapping
 
-from relook.cells.limits import LONGEST_GAP, MOST_MERGED, MOST_SHEETS, Meter
+from relook.cells.limits import LONGEST_GAP, MOST_COMMENTS, MOST_MERGED, MOST_SHEETS, Meter
 from relook.cells.model import EMPTY, Book, Cell, Sheet
 from relook.cells.package import SAVE_AGAIN, Package
 from relook.cells.xlsx_values import shortest
@@ -27,7 +27,8 @@ _CALC = "urn:org:documentfoundation:names:experimental:calc:xmlns:calcext:1.0 "
 _CELLS = (f"{_TABLE}table-cell", f"{_TABLE}covered-table-cell")
 _ROW = f"{_TABLE}table-row"
 _PARAGRAPH = f"{_TEXT}p"
-_ASIDE = (f"{_OFFICE}annotation", f"{_TEXT}note", f"{_TABLE}shapes", f"{_TEXT}ruby-text")
+_COMMENT = f"{_OFFICE}annotation"
+_ASIDE = (_COMMENT, f"{_TEXT}note", f"{_TABLE}shapes", f"{_TEXT}ruby-text")
 _SPACE = re.compile("[ \t\r\n]+")
 _DURATION = re.compile(r"PT(\d+)H(\d+)M(\d+)(?:[.,]\d+)?S")
 _FORMATS = {"percentage": "0%", "date": "yyyy-mm-dd", "time": "hh:mm:ss"}
@@ -62,6 +63,8 @@ class _ContentReader:
         self._hidden = False
         self._rows: list[tuple[Cell, ...]] = []
         self._merged: list[tuple[int, int, int, int]] = []
+        self._comments: list[tuple[int, int, str]] = []
+        self._said: list[str] | None = None  # of a comment that is being read
         self._gap = 0
         self._row_repeat = 1
         self._cells: list[Cell] = []
@@ -75,8 +78,11 @@ class _ContentReader:
     def start(self, tag: str, attributes: Mapping[str, str]) -> None:
         if tag in _ASIDE:
             self._aside += 1
+            if tag == _COMMENT and self._aside == 1 and self._attributes is not None:
+                self._said = []
         elif self._aside:
-            return
+            if tag == _PARAGRAPH and self._said is not None:
+                self._said.append("")
         elif tag == _PARAGRAPH:
             self._pieces = []
         elif self._pieces is not None:
@@ -100,6 +106,9 @@ class _ContentReader:
     def end(self, tag: str) -> None:
         if tag in _ASIDE:
             self._aside -= 1
+            if tag == _COMMENT and self._said is not None:
+                self._close_comment(self._said)
+                self._said = None
         elif self._aside:
             return
         elif tag == _PARAGRAPH and self._pieces is not None:
@@ -113,12 +122,20 @@ class _ContentReader:
             self._depth -= 1
             if self._depth == 0:
                 self.sheets.append(
-                    Sheet(self._title, tuple(self._rows), self._hidden, tuple(self._merged))
+                    Sheet(
+                        self._title,
+                        tuple(self._rows),
+                        self._hidden,
+                        tuple(self._merged),
+                        tuple(self._comments),
+                    )
                 )
 
     def text(self, data: str) -> None:
         if self._pieces is not None and not self._aside:
             self._pieces.append(_SPACE.sub(" ", data))
+        elif self._said:  # within a paragraph; date and author stand before the first
+            self._said[-1] += data
 
     def _open_sheet(self, attributes: Mapping[str, str]) -> None:
         if len(self.sheets) >= MOST_SHEETS:
@@ -131,7 +148,14 @@ class _ContentReader:
         self._hidden = attributes.get(f"{_TABLE}style-name", "") in self._hidden_styles
         self._rows = []
         self._merged = []
+        self._comments = []
         self._gap = 0
+
+    def _close_comment(self, paragraphs: list[str]) -> None:
+        said = "\n".join(paragraphs).strip()
+        if said and len(self._comments) < MOST_COMMENTS:
+            row = len(self._rows) + self._gap + 1
+            self._comments.append((row, len(self._cells) + self._empty_before + 1, said))
 
     def _close_cell(self) -> None:
         attributes = self._attributes

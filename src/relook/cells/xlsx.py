@@ -14,7 +14,7 @@ import posixpath
 import re
 from collections.abc import Mapping
 
-from relook.cells.limits import MOST_SHEETS, Meter
+from relook.cells.limits import MOST_COMMENTS, MOST_SHEETS, Meter, column_number
 from relook.cells.model import Book, Sheet
 from relook.cells.package import SAVE_AGAIN, Package
 from relook.cells.xlsx_sheet import SheetReader
@@ -27,6 +27,9 @@ _RELATION = "http://schemas.openxmlformats.org/package/2006/relationships Relati
 _PROPERTY = f"{_OFFICE}custom-properties property"
 _MODIFIED = "http://purl.org/dc/terms/ modified"
 _UTC = re.compile(r"\d{4}-\d\d-\d\dT\d\d:\d\d:\d\dZ", re.ASCII)
+_REFERENCE = re.compile(r"([A-Z]{1,3})([1-9]\d{0,6})", re.ASCII)
+#: What stands before the text where a program keeps threads of comments elsewhere.
+_THREAD = "[Threaded comment]"
 _STRICT = "http://purl.oclc.org/ooxml/"
 
 
@@ -57,7 +60,8 @@ def read_xlsx(package: Package) -> Book:
             )
         reader = SheetReader(title, strings, styles, meter)
         rows = reader.read(package, target)
-        sheets.append(Sheet(title, rows, hidden, tuple(reader.merged)))
+        comments = _comments(package, target)
+        sheets.append(Sheet(title, rows, hidden, tuple(reader.merged), comments))
     if not sheets:
         raise RelookError("the file holds no sheet", where=Place(file), mend=SAVE_AGAIN)
     return Book(
@@ -156,6 +160,41 @@ def _shared_strings(package: Package, part: str | None) -> list[str]:
     if part is not None and part in package.names:
         package.parse(part, start, end, text)
     return strings
+
+
+def _comments(package: Package, sheet: str) -> tuple[tuple[int, int, str], ...]:
+    """Return the comments of a sheet, of a thread what its first comment says (§18.7)."""
+    parts = dict(_relations(package, sheet).values())
+    part = parts.get("comments", "")
+    found: list[tuple[int, int, str]] = []
+    pieces: list[str] = []
+    at = ""
+    inside = False
+
+    def start(tag: str, attributes: Mapping[str, str]) -> None:
+        nonlocal at, inside
+        if tag == f"{_MAIN}comment":
+            at = attributes.get("ref", "")
+            pieces.clear()
+        inside = tag == f"{_MAIN}t"
+
+    def end(tag: str) -> None:
+        nonlocal inside
+        inside = False
+        place = _REFERENCE.fullmatch(at)
+        if tag == f"{_MAIN}comment" and place and len(found) < MOST_COMMENTS:
+            said = unescape("".join(pieces))
+            if said.startswith(_THREAD):
+                said = said.partition("Comment:")[2]
+            found.append((int(place[2]), column_number(place[1]), said.strip()))
+
+    def text(data: str) -> None:
+        if inside:
+            pieces.append(data)
+
+    if part in package.names:
+        package.parse(part, start, end, text)
+    return tuple(each for each in found if each[2])
 
 
 def _custom_properties(package: Package) -> dict[str, str]:

@@ -60,10 +60,10 @@ def _check_twins(data: LabelData, name: str, used: dict[str, int], findings: Fin
     for pair in near_twins(used):
         findings.add(
             f'the labels "{pair.kept}" ({used[pair.kept]:,} times) and "{pair.other}" '
-            f"({used[pair.other]:,}) differ only by {pair.how}; where they meet they count as "
-            "disagreement",
+            f"({used[pair.other]:,}) differ only by {pair.how}",
             _first_place(data, name, held.texts.index(pair.other)),
-            f'write "{pair.kept}" throughout, if they are one label',
+            f'write "{pair.kept}" throughout if they are one label, since where they meet they '
+            "count as disagreement",
             "warning",
         )
     for rare, common in likely_slips(used):

@@ -15,6 +15,8 @@ SHEET_QUEUE = "Queue"
 SHEET_ITEMS = "Items"
 SHEET_CODE_BOOK = "Code book"
 SHEET_LISTS = "_lists"
+#: The field of the first sheet for another name.
+FILLED_IN_BY = "Filled in by"
 
 #: Headers of the columns that every queue sheet has. Shown columns stand between item and variable,
 #: competing labels between variable and decision. Headers are matched case-folded on reading.

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from relook.cells.limits import column_letters
 from relook.cells.model import EMPTY, Book, Cell, Sheet
 from relook.errors import Place, Problem, RelookError, listed, nearest
+from relook.worksheet.beside import beside_table, comments, other_sheets
 from relook.worksheet.keys import ALPHABET, plain_key
 from relook.worksheet.matching import folded
 from relook.worksheet.model import (
@@ -87,7 +88,7 @@ class ReturnedWorksheet:
     columns : mapping of str to str
         Letters of the columns by header, case-folded, of the first queue sheet.
     notes : tuple of Problem
-        What had to be guessed.
+        What had to be guessed, and what stands where nothing is read from.
     """
 
     file: str
@@ -96,6 +97,11 @@ class ReturnedWorksheet:
     rows: tuple[ReturnedRow, ...]
     columns: Mapping[str, str]
     notes: tuple[Problem, ...] = ()
+
+
+def is_own_header(header: str) -> bool:
+    """Whether a case-folded header is that of a column to fill in, or of the row itself."""
+    return header in {folded(own) for own in _OURS} or header.startswith(_TICK)
 
 
 def read_worksheet(book: Book) -> ReturnedWorksheet:
@@ -121,7 +127,16 @@ def read_worksheet(book: Book) -> ReturnedWorksheet:
     for queue in queues:
         columns, said = _columns(queue, book.file)
         notes += said
-        rows += _rows(queue, columns)
+        own = _rows(queue, columns)
+        rows += own
+        notes += beside_table(
+            queue.sheet,
+            book.file,
+            header_row=queue.header_row,
+            columns={*(at for each in queue.headers.values() for at in each), columns.key},
+            rows={row.row - 1 for row in own} | set(_repeated_headers(queue, columns)),
+        )
+    notes += [*comments(book), *other_sheets(book, [queue.sheet for queue in queues])]
     return ReturnedWorksheet(
         file=book.file,
         project=identity.get(PROPERTY_PROJECT, ""),
@@ -330,6 +345,11 @@ def _rows(queue: _Queue, columns: _Columns) -> list[ReturnedRow]:
             )
         )
     return rows
+
+
+def _repeated_headers(queue: _Queue, columns: _Columns) -> list[int]:
+    """Rows that are the header once more, as after two sheets were joined."""
+    return [at for at, cells in enumerate(queue.sheet.rows) if _repeats_header(cells, columns)]
 
 
 def _repeats_header(cells: Sequence[Cell], columns: _Columns) -> bool:

@@ -10,11 +10,10 @@ from relook.cells.writing import put_text
 from relook.worksheet import layout, palette
 from relook.worksheet import start_words as words
 from relook.worksheet.looks import Look, Looks
-from relook.worksheet.model import SHEET_START, Worksheet
+from relook.worksheet.model import FILLED_IN_BY, SHEET_START, Worksheet
 from relook.worksheet.page import set_height, set_up_page
 
 _MARGIN, _NAME, _TEXT = 3.0, 15.0, 82.0
-FILLED_IN_BY = "Filled in by"
 
 
 def write_start(book: Workbook, looks: Looks, worksheet: Worksheet) -> None:

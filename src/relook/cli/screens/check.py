@@ -1,4 +1,7 @@
-"""The screen of `relook check`: errors first, then warnings, then notes, each with its mend."""
+"""The screen of `relook check`: errors first, then warnings, then notes.
+
+Findings that one mend is for stand together, with the mend below the last of them.
+"""
 
 from __future__ import annotations
 
@@ -7,7 +10,7 @@ from typing import Any
 from rich.console import RenderableType
 from rich.text import Text
 
-from relook.cli.screens.layout import counted, heading, note, stacked
+from relook.cli.screens.layout import by_mend, counted, heading, note, stacked, told_together
 from relook.errors import Problem
 from relook.tables.checking import Checked
 
@@ -20,8 +23,8 @@ def check_screen(checked: Checked) -> RenderableType:
     if not found:
         return Text("Nothing wrong was found.")
     parts: list[RenderableType] = [heading(_sum(found))]
-    for problem in found[:_SHOWN]:
-        parts += [Text(""), note(f"{problem.severity}: {problem}")]
+    for together in by_mend(found[:_SHOWN]):
+        parts += [Text(""), note(told_together(together, severity=True))]
     if len(found) > _SHOWN:
         left = len(found) - _SHOWN
         parts += [Text(""), note(f"… and {left:,} more; --problems FILE.csv writes them all")]

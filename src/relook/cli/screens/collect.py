@@ -7,7 +7,16 @@ from collections.abc import Sequence
 from rich.console import RenderableType
 from rich.text import Text
 
-from relook.cli.screens.layout import counted, heading, note, shortened, small_table, stacked
+from relook.cli.screens.layout import (
+    by_mend,
+    counted,
+    heading,
+    note,
+    shortened,
+    small_table,
+    stacked,
+    told_together,
+)
 from relook.project.returning.collected import Collected, RowReport
 from relook.project.returning.rebuilding import Rebuilt
 from relook.project.returning.sorting import CollectedAll
@@ -52,7 +61,7 @@ def _collected(result: Collected, project: Project, sheet: str, entry: str) -> l
     ):
         if problems:
             parts += [Text(""), heading(said)]
-            parts += [note(str(problem)) for problem in problems[:_SHOWN]]
+            parts += [note(told_together(each)) for each in by_mend(problems[:_SHOWN])]
             parts += _more(len(problems))
     parts += _rows("not taken", result.rejected)
     parts += _conflicts(result)

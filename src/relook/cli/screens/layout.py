@@ -6,11 +6,14 @@ Colour and width never carry meaning: a bar stands beside its number, an undefin
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
+from dataclasses import replace
 
 from rich.console import Group, RenderableType
 from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
+
+from relook.errors import Problem
 
 _BAR, _BAR_WIDTH = "▪", 12
 _TEXT_WIDTH = 48
@@ -118,3 +121,20 @@ def shortened(text: str, width: int = _TEXT_WIDTH) -> str:
     """A text on one line, cut with an ellipsis where it is longer than `width`."""
     line = " ".join(text.split())
     return line if len(line) <= width else line[: width - 1].rstrip() + "…"
+
+
+def by_mend(found: Sequence[Problem]) -> list[list[Problem]]:
+    """Put findings of one severity and one mend together, each group where its first one is."""
+    groups: dict[tuple[str, str], list[Problem]] = {}
+    for at, problem in enumerate(found):
+        # Those without a mend have nothing in common.
+        key = (problem.severity, problem.mend or f"\0{at}")
+        groups.setdefault(key, []).append(problem)
+    return list(groups.values())
+
+
+def told_together(found: Sequence[Problem], *, severity: bool = False) -> str:
+    """Tell findings that one mend is for, and the mend below the last of them."""
+    told = [f"{f'{one.severity}: ' if severity else ''}{replace(one, mend=None)}" for one in found]
+    mend = found[-1].mend
+    return "\n".join([*told, f"mend: {mend}"] if mend is not None else told)

@@ -37,8 +37,9 @@ def queue_screen(run: QueueRun) -> RenderableType:
         clean = (
             ""
             if limit is None
-            else f" Even if all {planned.n_audit_items:,} are upheld, up to {limit:.0%} of the labels "
-            "released so may deserve to be others (95% interval, strata weighed by their sizes)."
+            else f" Even if all {planned.n_audit_items:,} are upheld, up to {limit:.0%} of the "
+            "labels released so may deserve to be others (95% interval, strata weighed by their "
+            "sizes)."
         )
         parts.append(
             note(

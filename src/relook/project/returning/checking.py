@@ -14,7 +14,7 @@ from relook.project.returning.collected import RowReport
 from relook.worksheet.keys import evidence_digest
 from relook.worksheet.matching import Reading, folded, match_decision, match_ticks, shown
 from relook.worksheet.model import SheetVariable
-from relook.worksheet.read import ReturnedRow, ReturnedWorksheet
+from relook.worksheet.read import ReturnedRow, ReturnedWorksheet, is_own_header
 
 #: A column whose cells nearly all differ tells rows apart; one of a few repeated labels does not.
 _TELLING_SHARE = 0.5
@@ -98,6 +98,7 @@ class Checked:
     blank: set[str] = field(default_factory=set)
     rejected: list[RowReport] = field(default_factory=list)
     edited: list[RowReport] = field(default_factory=list)
+    keys: frozenset[str] = frozenset()  # of all rows that belong to the project
     notes: list[Problem] = field(default_factory=list)
 
 
@@ -112,6 +113,7 @@ def check_worksheet(returned: ReturnedWorksheet, sent: Sent) -> Checked:
     _refuse_foreign(returned, sent)
     result = Checked(notes=list(returned.notes))
     known = [row for row in returned.rows if row.key in sent.rows]
+    result.keys = frozenset(row.key for row in known)
     misplaced = _check_evidence(returned, known, sent, result)
     found: dict[str, list[Candidate]] = defaultdict(list)
     for row in returned.rows:
@@ -278,6 +280,7 @@ def _check_evidence(
             if text is not None and digest_of(text) != digest:
                 altered[header].append((row, digest_of(text)))
     _note_missing_columns(returned, known, sent, result)
+    _note_further_columns(returned, known, sent, result)
     misplaced: dict[int, RowReport] = {}
     for header, cells in altered.items():
         column = returned.columns.get(header, header)
@@ -337,4 +340,22 @@ def _note_missing_columns(
             severity="note",
         )
         for header in missing
+    )
+
+
+def _note_further_columns(
+    returned: ReturnedWorksheet, known: Sequence[ReturnedRow], sent: Sent, result: Checked
+) -> None:
+    """Tell of columns that were put in and hold something: nothing is taken from them."""
+    filled = Counter(header for row in known for header, text in row.evidence.items() if text)
+    was_sent = {header for row in known for header in sent.rows[row.key].evidence}
+    result.notes.extend(
+        Problem(
+            f'the column "{header}" was not sent and is not taken; cells filled in it: {n:,}',
+            Place(returned.file, column=returned.columns.get(header)),
+            "write what matters into the note of the row",
+            "note",
+        )
+        for header, n in filled.items()
+        if header not in was_sent and not is_own_header(header)
     )

@@ -12,7 +12,7 @@ from pathlib import Path
 from relook import __version__
 from relook.cells.opening import open_book
 from relook.core.decisions import fold
-from relook.errors import Place, Problem, RelookError
+from relook.errors import Place, Problem, RelookError, listed
 from relook.project.archive.decidable import takes_numbers, variables_of_round
 from relook.project.archive.record import Record, make_file, read_record, write_file
 from relook.project.archive.rounds import read_rounds
@@ -90,6 +90,8 @@ def collect(
                 unreadable.append(_problem_of(error))
         weighed = weigh(record, files, reinstate=reinstate)
         result = _report(weighed, files, read, unreadable, dry_run=dry_run)
+        absent = rows_not_there(files, read, sent, record)
+        result = replace(result, notes=(*result.notes, *absent))
         if strict and not result.is_complete:
             result = replace(result, accepted=0, superseded=0, adjusted=(), held_back=True)
         elif not dry_run:
@@ -120,6 +122,40 @@ def check_returned(returned: Returned, sent: Sent, *, seen: bool) -> CheckedFile
     book = open_book(returned.data, returned.name)
     checked = check_worksheet(read_worksheet(book), sent)
     return CheckedFile(digest=returned.digest, modified=book.modified, seen=seen, checked=checked)
+
+
+def rows_not_there(
+    files: Sequence[CheckedFile], read: Sequence[Returned], sent: Sent, record: Record
+) -> list[Problem]:
+    """Tell of rows that a returned worksheet should have and that are in no file.
+
+    Rows that have a decision already are passed over: a mend sheet holds few rows on purpose.
+    """
+    there = {key for file in files for key in file.checked.keys}
+    decided = {(each.item, each.variable, each.adjudicator) for each in record.decisions}
+    names: dict[str, str] = {}
+    for file, returned in zip(files, read, strict=True):
+        for key in file.checked.keys:
+            names[sent.rows[key].row.worksheet] = returned.name
+    found = []
+    for worksheet, name in names.items():
+        rows = [held.row for held in sent.by_worksheet[worksheet]]
+        gone = [
+            row.item
+            for row in rows
+            if row.key not in there and (row.item, row.variable, row.adjudicator) not in decided
+        ]
+        if gone:
+            said = f"{len(gone):,} of the {len(rows):,} rows that were sent are not in the file"
+            found.append(
+                Problem(
+                    f"{said}: {listed(dict.fromkeys(gone))}; they stay open",
+                    Place(name),
+                    "if they were deleted, fill them in in the worksheet as it was sent",
+                    "note",
+                )
+            )
+    return found
 
 
 def splits_of(project: Project, record: Record) -> tuple[Split, ...]:
