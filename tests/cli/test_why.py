@@ -113,3 +113,11 @@ def test_a_slip_names_the_nearest(loaves, capsys, arguments, says):
     code, out, err = said(capsys, "why", loaves, *arguments)
     assert (code, out) == (2, "")
     assert says in err
+
+
+def test_labels_within_the_tolerance_have_no_place(loaves, capsys):
+    """L012's crumb marks, 49 to 51 with a tolerance of 2: no dispute, so no place in the queue."""
+    code, out, _ = said(capsys, "why", loaves, "L012", "--variable", "crumb")
+    assert code == 0
+    assert "not disputed: its labels lie within the tolerance" in out
+    assert "place " not in out

@@ -1,9 +1,12 @@
-"""Doubt: the estimated probability that an item's consensus label is wrong.
+"""Doubt: how likely an item's consensus label is wrong, under a model of how coders err.
 
 The model is that of Dawid, A. P. & Skene, A. M. (1979). Maximum likelihood estimation of observer
 error-rates using the EM algorithm. Applied Statistics 28(1):20–28: every item has one true value,
 every coder a table of how they label each true value. Each coder's table is drawn toward the pooled
-one, so that a coder with few labels cannot reach certainty.
+one, so that a coder with few labels cannot reach certainty; with `SHRINK` 0 the estimates would be
+the paper's maximum likelihood ones. Doubt is one minus the posterior of the consensus label. It
+orders items; the model takes coders' errors for independent, and where they are not its extremes
+promise too much.
 
 The likelihood has several maxima, so the start is fixed: "shares", T_ij = the share of j among the
 labels of item i, as in the paper.

@@ -75,8 +75,9 @@ class Measured:
         DataFrame of shape (n_disputed_items, 14)
             Columns rank, item, variable, contribution (to D_o), share (of D_o), cumulative_share,
             alpha_cost (contribution/D_e: what alpha lost by it), intensity (mean δ² over the item's
-            pairs of labels), doubt (the probability that the consensus label is wrong, Dawid &
-            Skene 1979; nan without ground for it), n_labels, consensus, tie, settled_alpha.
+            pairs of labels), doubt (a score from 0 to 1 of how likely the consensus label is
+            wrong, after Dawid & Skene 1979, no calibrated probability; nan without ground for it),
+            n_labels, consensus, tie, settled_alpha.
 
         Examples
         --------

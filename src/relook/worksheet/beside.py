@@ -79,7 +79,7 @@ def other_sheets(book: Book, queues: Collection[Sheet]) -> list[Problem]:
         if name:
             found.append(
                 Problem(
-                    f'the sheet says "{FILLED_IN_BY}" {_shown(name)}; the decisions are recorded '
+                    f'the sheet says "{FILLED_IN_BY}" {_shown(name)}; the rows are recorded '
                     "as those of the person it was written for",
                     Place(book.file, sheet.title),
                     "name whoever decides by --adjudicator, when the next round is queued",

@@ -153,17 +153,19 @@ def _standing(held: Explanation) -> list[str]:
             f"place {count(held.rank)} by contribution, of "
             f"{counted(held.n_disputed_items, 'disputed item')} (equal ones share a place)"
         )
+    else:
+        lines.append("not disputed: its labels lie within the tolerance, so it is not queued")
     if held.consensus is not None:
         lines.append(f"consensus label: {held.consensus}")
     elif held.tied:
         lines.append(f"no consensus label: a tie of {', '.join(held.tied)}")
     if held.doubt is not None:
         # The model takes coders' errors for independent, so that its extremes promise too much.
-        doubt = "below 1%" if held.doubt < 0.01 else f"{held.doubt:.0%}"
+        doubt = "below 0.01" if held.doubt < 0.01 else f"{held.doubt:.2f}"
         of = "the likeliest of them" if held.tied else "the consensus label"
         lines.append(
-            f"doubt {doubt}: a score that {of} is wrong, by a model of how each coder labels "
-            "(Dawid & Skene 1979) that takes their errors for independent; not calibrated"
+            f"doubt {doubt}: a score from 0 to 1 that {of} is wrong, by a model of how each coder "
+            "labels (Dawid & Skene 1979) that takes their errors for independent; not calibrated"
         )
     else:
         lines.append(f"doubt is undefined: {held.doubt_undefined_because}")

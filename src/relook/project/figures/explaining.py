@@ -13,7 +13,7 @@ from relook.core.consensus import Consensus, extend_values
 from relook.core.contributions import alpha_costs, item_contributions, shares
 from relook.core.differences import doubled_midranks
 from relook.core.doubt import Doubt
-from relook.core.exact import IntArray
+from relook.core.exact import FloatArray, IntArray
 from relook.core.settling import settled_alphas
 from relook.errors import RelookError, nearest
 from relook.project.figures.consensus_texts import consensus_for, consensus_text
@@ -120,10 +120,11 @@ class Explanation:
         None for a tie.
     tied : tuple of str
     doubt : float or None
-        Estimated probability that the consensus label is wrong.
+        Score from 0 to 1 of how likely the consensus label is wrong.
     doubt_undefined_because : str or None
     rank : int or None
-        Place among the items by contribution, equal ones sharing the best place; None where 0.
+        Place among the disputed items by contribution, equal ones sharing the best place; None
+        where it is not disputed.
     candidates : tuple of Candidate
     """
 
@@ -233,7 +234,7 @@ def _explain(loaded: Loaded, name: str, item: int) -> Explanation:
         tied=tied,
         doubt=_doubt_of(doubt, item),
         doubt_undefined_because=doubt.undefined_because,
-        rank=int(np.count_nonzero(contributions > contribution)) + 1 if contribution > 0 else None,
+        rank=_rank(agreement, contributions, item),
         n_disputed_items=agreement.n_disputed_items,
         alpha=agreement.alpha,
         undefined_because=agreement.undefined_because,
@@ -274,6 +275,13 @@ def _formula(variable: Variable) -> str:
 def _ends(given: object) -> tuple[str, str]:
     assert isinstance(given, list | tuple)  # the settings were checked
     return str(given[0]), str(given[1])
+
+
+def _rank(agreement: Agreement, contributions: FloatArray, item: int) -> int | None:
+    disputed = np.append(agreement.disputed_profiles, False)[agreement.profile_of_item]
+    if not disputed[item]:
+        return None
+    return int(np.count_nonzero(contributions[disputed] > contributions[item])) + 1
 
 
 def _midranks(held: VariableLabels, agreement: Agreement) -> tuple[Midrank, ...]:
