@@ -11,7 +11,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from relook.tables.joining import order_by_item_and_coder
+from relook.tables.joining import Flat, _sort_on_both, by_item_and_coder
 from relook.tables.labels import LabelData, read_labels
 from relook.tables.numbers import parse_number
 from relook.tables.schema import LabelSource, Variable
@@ -216,11 +216,36 @@ def test_any_labels_come_back_from_a_file(
 def test_sorting_is_the_same_by_packed_words_and_by_keys() -> None:
     """Both ways of sorting give item, coder, then the order of reading."""
     rng = np.random.default_rng(5)
-    item, coder = rng.integers(0, 9, 200), rng.integers(0, 4, 200)
-    quick = order_by_item_and_coder(item, coder, 4)
-    assert quick.tolist() == np.lexsort((coder, item)).tolist()
-    far = order_by_item_and_coder(item, coder, 2**60)
-    assert far.tolist() == quick.tolist()
+    n = 200
+    remark = np.array([f"r{at}" for at in range(n)], dtype=object)
+    for coder in (rng.integers(0, 4, n), None):
+        for row in (np.arange(7, n + 7), np.sort(rng.choice(n * 3, n, replace=False))):
+            flat = Flat(
+                item=rng.integers(0, 9, n).astype(np.int32),
+                coder=coder,
+                text=rng.integers(0, 5, n).astype(np.int32),
+                file=np.broadcast_to(np.int32(0), n),
+                column=np.broadcast_to(np.int32(2), n),
+                row=row,
+                remark=remark,
+                texts=np.array(list("abcde"), dtype=object),
+                n_missing=0,
+            )
+            order = np.lexsort((flat.item,) if coder is None else (coder, flat.item))
+            want = flat.take(order)
+            for n_items in (9, 2**60):
+                got = by_item_and_coder(flat, n_items, 4)
+                for name in ("item", "coder", "text", "file", "column", "row", "remark"):
+                    held, due = getattr(got, name), getattr(want, name)
+                    assert (held is None and due is None) or held.tolist() == due.tolist(), name
+
+
+def test_many_numbers_are_sorted_on_two_threads_as_on_one() -> None:
+    """A million and more, as numpy sorts them."""
+    numbers = np.random.default_rng(3).integers(0, 2**62, (1 << 20) + 3)
+    got = numbers.copy()
+    _sort_on_both(got)
+    assert np.array_equal(got, np.sort(numbers))
 
 
 def test_blank_items_and_coders_leave_no_trace(tmp_path: Path) -> None:

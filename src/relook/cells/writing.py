@@ -12,10 +12,9 @@ from collections.abc import Iterable
 from typing import TYPE_CHECKING
 from urllib.parse import urlsplit
 
-from openpyxl.styles.cell_style import StyleArray
-
 if TYPE_CHECKING:
     from openpyxl.cell.cell import Cell
+    from openpyxl.styles.cell_style import StyleArray
     from openpyxl.worksheet.worksheet import Worksheet as OpenpyxlSheet
 
 #: The most that a cell holds, in UTF-16 units; a program that finds more repairs the file.

@@ -4,14 +4,17 @@ from __future__ import annotations
 
 import contextlib
 from collections.abc import Callable, Iterator, Sequence
+from typing import TYPE_CHECKING
 
 from relook.cli.terminal import Terminal
 from relook.errors import RelookError
-from relook.project.figures.scoring import Score
-from relook.project.sending.queueing import QueueRequest
-from relook.project.setup.folder import Project
-from relook.project.setup.loading import Loaded
-from relook.project.setup.settings import QueueSettings
+
+if TYPE_CHECKING:
+    from relook.project.figures.scoring import Score
+    from relook.project.sending.queueing import QueueRequest
+    from relook.project.setup.folder import Project
+    from relook.project.setup.loading import Loaded
+    from relook.project.setup.settings import QueueSettings
 
 
 def wants_dask(engine: str | None, *, scheduler: str | None, by_item: bool) -> bool:

@@ -14,8 +14,8 @@ from relook.core.profiles import Profiles, merge
 from relook.core.summed import add_up
 from relook.engines.parts import FoundItems, PartOfVariable, ReducedPart
 from relook.errors import Problem, RelookError
-from relook.project.figures.ordering import hashed_ids
 from relook.project.setup.folder import Project
+from relook.project.setup.item_hashes import hashed_ids
 from relook.project.setup.loading import Loaded
 from relook.tables.items import ItemData
 from relook.tables.labels import LabelData, VariableLabels

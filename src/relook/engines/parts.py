@@ -17,7 +17,7 @@ from relook.core.exact import IntArray
 from relook.core.labels import CodedLabels
 from relook.core.profiles import Profiles, collapse
 from relook.errors import Problem
-from relook.project.figures.ordering import hashed_ids
+from relook.project.setup.item_hashes import hashed_ids
 from relook.tables.labels import LabelData, VariableLabels, read_labels
 from relook.tables.schema import LabelSource, Variable
 

@@ -16,7 +16,7 @@ import pandas as pd
 
 from relook.core.exact import IntArray
 from relook.engines.parts import FoundItems, ReducedPart, find_items, read_part, reduce_part
-from relook.project.figures.ordering import hashed_ids
+from relook.project.setup.item_hashes import hashed_ids
 from relook.tables.columns import LabelColumn, labels_of_columns
 from relook.tables.labels import LabelData
 from relook.tables.schema import LabelSource, Variable

@@ -15,10 +15,14 @@ import numpy.typing as npt
 import pandas as pd
 
 from relook.core.exact import BoolArray, IntArray
+from relook.tables.numbered_texts import TextBytes, in_order_of_appearance, numbers_of_texts
 
 #: Bytes that a blank text may begin with: ASCII white space, and the first bytes of all others
 #: that Unicode counts as such (U+0085, U+00A0, U+1680, U+2000 and following, U+3000).
 _SPACES = (*range(9, 14), *range(28, 33), 0xC2, 0xE1, 0xE2, 0xE3)
+
+#: From so many texts on, columns with many distinct ones among the first are coded by numbers.
+_MANY, _HEAD = 100_000, 4_096
 
 
 def read_regular(
@@ -91,6 +95,9 @@ def coded_column(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]]:
     """Return an Arrow column as codes into its distinct texts, in order of first appearance."""
     import pyarrow as pa
 
+    numbered = _coded_by_numbers(column)
+    if numbered is not None:
+        return numbered
     encoded = column.dictionary_encode()
     if encoded.num_chunks == 0:
         return np.zeros(0, dtype=np.int32), np.empty(0, dtype=object)
@@ -100,21 +107,51 @@ def coded_column(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]]:
     return codes, np.asarray(texts, dtype=object)
 
 
+def _coded_by_numbers(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]] | None:
+    """Code a column whose many distinct texts are numbers in disguise, as most ids are."""
+    import pyarrow as pa
+
+    n = len(column)
+    if not _MANY <= n < 2**31 or column.null_count:
+        return None
+    head = column.slice(0, _HEAD)
+    if len(head.unique()) < _HEAD // 4:
+        return None  # few texts are hashed quickly
+    found = numbers_of_texts([_text_bytes(chunk) for chunk in column.chunks], 2 * n)
+    if found is None:
+        return None
+    codes, first = in_order_of_appearance(*found)
+    texts, begin = [], 0
+    for chunk in column.chunks:
+        low, high = np.searchsorted(first, [begin, begin + len(chunk)])
+        texts.append(chunk.take(pa.array(first[low:high] - begin)))
+        begin += len(chunk)
+    return codes, np.asarray(pa.chunked_array(texts).to_numpy(), dtype=object)
+
+
+def _text_bytes(chunk: Any) -> TextBytes:
+    _, offsets, held = chunk.buffers()
+    large = str(chunk.type).startswith("large")
+    every: IntArray = (
+        np.frombuffer(offsets, np.int64) if large else np.frombuffer(offsets, np.int32)
+    )
+    bounds = every[chunk.offset : chunk.offset + len(chunk) + 1]
+    letters = np.zeros(0, np.uint8) if held is None else np.frombuffer(held, dtype=np.uint8)
+    return TextBytes(bounds, letters)
+
+
 def maybe_blank(column: Any) -> BoolArray:
     """Return which cells of an Arrow column are empty or begin as a blank one may, by its bytes."""
     found = [np.zeros(0, dtype=bool)]
     space = np.zeros(256, dtype=bool)
     space[list(_SPACES)] = True
     for chunk in column.chunks:
-        _, offsets, held = chunk.buffers()
-        wide = np.int64 if str(chunk.type).startswith("large") else np.int32
-        bounds = np.frombuffer(offsets, dtype=wide)[chunk.offset : chunk.offset + len(chunk) + 1]
-        begin, empty = bounds[:-1], bounds[1:] == bounds[:-1]
-        if held is None or held.size == 0:
+        held = _text_bytes(chunk)
+        begin, empty = held.bounds[:-1], held.bounds[1:] == held.bounds[:-1]
+        if held.letters.size == 0:
             found.append(empty)
             continue
-        letters = np.frombuffer(held, dtype=np.uint8)
         # An empty cell at the very end begins where no byte is.
-        first = letters[np.minimum(begin, letters.size - 1)]
+        first = held.letters[np.minimum(begin, held.letters.size - 1)]
         found.append(empty | space[first])
     return np.concatenate(found)

@@ -11,7 +11,7 @@ from relook.core.exact import BoolArray, IntArray
 from relook.core.labels import CodedLabels
 from relook.errors import Place
 from relook.tables.findings import Findings
-from relook.tables.joining import Flat, order_by_item_and_coder
+from relook.tables.joining import Flat, by_item_and_coder
 from relook.tables.reading import Table, Texts
 from relook.tables.schema import Duplicates, Variable
 from relook.tables.values import CodedValues, code_values
@@ -66,8 +66,7 @@ def code_variable(variable: Variable, flat: Flat, context: Context) -> Coding | 
             for where, more in _places_of(flat, text, context):
                 context.findings.add(fault.message + more, where, fault.mend)
         flat = flat.take(code_of_text[flat.text] >= 0)
-    coder = np.zeros(flat.item.size, dtype=np.int32) if flat.coder is None else flat.coder
-    flat = flat.take(order_by_item_and_coder(flat.item, coder, len(context.coders)))
+    flat = by_item_and_coder(flat, len(context.items), len(context.coders))
     value: IntArray = code_of_text[flat.text]
     if flat.coder is not None:
         keep = _single(variable, flat, value, context)

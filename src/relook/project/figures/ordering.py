@@ -2,14 +2,11 @@
 
 from __future__ import annotations
 
-import hashlib
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import get_args
 
 import numpy as np
-import numpy.typing as npt
-import pandas as pd
 
 from relook.core.agreement import Agreement
 from relook.core.doubt import Doubt, estimate_doubt, no_ground
@@ -106,7 +103,7 @@ def order_items(
     doing("ranking items")
     priority = priorities(loaded)
     rank_by: RankBy = queue.rank_by
-    ranking = rank_items(variables, item_hashes(loaded, seed), rank_by=rank_by, priority=priority)
+    ranking = rank_items(variables, loaded.item_hashes(seed), rank_by=rank_by, priority=priority)
     selection = select_head(
         ranking,
         top=queue.top,
@@ -177,20 +174,6 @@ def _refuse_order_by_doubt(doubts: Mapping[str, Doubt]) -> None:
     raise RelookError(
         f"there is no doubt to rank by ({reasons})", mend="rank by contribution or by intensity"
     )
-
-
-def item_hashes(loaded: Loaded, seed: int) -> IntArray:
-    """Return a keyed hash of each item's id, so that no tie follows the order of the file."""
-    known = loaded.hashes.get(seed)
-    return hashed_ids(loaded.labels.items, seed) if known is None else known
-
-
-def hashed_ids(items: npt.NDArray[np.object_], seed: int) -> IntArray:
-    """Return the keyed hash of each of some ids, wherever they were read."""
-    key = hashlib.sha256(f"tie order {seed}".encode()).hexdigest()[:16]
-    ids = np.asarray(items, dtype=object)
-    hashed = pd.util.hash_array(ids, hash_key=key, categorize=False)
-    return (hashed >> np.uint64(1)).astype(np.int64)
 
 
 def priorities(loaded: Loaded) -> FloatArray | None:

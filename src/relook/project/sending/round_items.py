@@ -13,7 +13,7 @@ from relook.core.exact import BoolArray
 from relook.project.archive.history import History
 from relook.project.archive.rounds import RoundStratum
 from relook.project.figures.consensus_texts import consensus_for
-from relook.project.figures.ordering import Ordering, item_hashes
+from relook.project.figures.ordering import Ordering
 from relook.project.sending.sheets import coders_of_item
 from relook.project.setup.loading import Loaded
 from relook.worksheet.plan import PlanItem, RowKind
@@ -106,7 +106,7 @@ def audit_draws(
     }
     sizes = np.array([int((stratum >= 0).sum()) for stratum in strata_of.values()])
     shares = allocate(sizes, n_audit)
-    hashes = item_hashes(loaded, seed)
+    hashes = loaded.item_hashes(seed)
     return [
         (
             name,

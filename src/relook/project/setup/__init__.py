@@ -2,5 +2,5 @@
 
 the folder: folder, people
 its settings: settings, settings_schema, settings_text, guessed
-its tables: loading
+its tables: loading, item_hashes
 """

@@ -16,6 +16,7 @@ from relook.core.differences import difference_function
 from relook.core.exact import IntArray
 from relook.errors import Place, Problem, RelookError
 from relook.project.setup.folder import Project
+from relook.project.setup.item_hashes import ItemLookup, hashed_ids
 from relook.project.setup.settings import SETTINGS_FILE
 from relook.tables.items import ItemData, read_items
 from relook.tables.labels import LabelData, VariableLabels, read_labels
@@ -40,7 +41,7 @@ class Loaded:
     agreements : dict of str to Agreement
         One per variable, in the order of the settings.
     hashes : dict of int to int array of shape (n_items,)
-        Keyed hashes of the items' ids by seed, where they were taken when the labels were read.
+        Keyed hashes of the items' ids by seed, as far as they were taken already.
     """
 
     project: Project
@@ -59,15 +60,22 @@ class Loaded:
         """A line per file that was read: what it was taken for."""
         return self.labels.said + (self.items.said if self.items is not None else ())
 
+    def item_hashes(self, seed: int) -> IntArray:
+        """Return a keyed hash of each item's id, so that no tie follows the order of the file."""
+        known = self.hashes.get(seed)
+        if known is None:
+            known = self.hashes[seed] = hashed_ids(self.labels.items, seed)
+        return known
+
     def item_numbers(self, items: Sequence[str]) -> IntArray:
         """Return the index of each item's id, -1 for those without an entry in the label table."""
-        number = self._number_of_item
-        return np.array([number.get(item, -1) for item in items], dtype=np.int64)
+        return self._lookup.numbers(items)
 
     @cached_property
-    def _number_of_item(self) -> dict[str, int]:
-        """The index of each item's id; asked for row by row, so made once."""
-        return {item: at for at, item in enumerate(self.labels.items.tolist())}
+    def _lookup(self) -> ItemLookup:
+        """Asked for row by row, so made once."""
+        seed = next(iter(self.hashes), 0)
+        return ItemLookup(self.labels.items, self.item_hashes(seed), seed)
 
 
 def load(project: Project, *, only: Sequence[str] | None = None, doing: Doing = silently) -> Loaded:
