@@ -175,3 +175,22 @@ def test_a_limit_of_nothing_is_answered_with_a_mend(tmp_path, capsys, flag, valu
     assert run(["queue", str(ferry), flag, value]) == 2
     assert f"mend: {mend}" in capsys.readouterr().err
     assert not (ferry / "rounds").exists()
+
+
+@pytest.mark.skipif(sys.platform != "linux", reason="only Linux has names of any bytes")
+def test_names_that_are_no_text_are_refused_in_words(tmp_path, capsys):
+    """A file so named cannot name a coder, and a folder so named cannot stand in relook.toml."""
+    rows = "item,x,y,z\n" + "".join(f"i{at},p,{'pq'[at % 2]},p\n" for at in range(8))
+    table = Path(os.fsdecode(os.fsencode(tmp_path) + b"/caf\xe9.csv"))
+    table.write_text(rows, encoding="utf-8")
+    assert run(["score", str(table)]) == 2
+    said = capsys.readouterr().err
+    assert "holds bytes that are no text in UTF-8" in said
+    assert "mend: rename the file" in said
+    folder = Path(os.fsdecode(os.fsencode(tmp_path) + b"/d\xe9"))
+    folder.mkdir()
+    (folder / "labels.csv").write_text(rows, encoding="utf-8")
+    into = tmp_path / "p"
+    assert run(["new", str(folder / "labels.csv"), "--into", str(into), "--yes"]) == 2
+    assert "relook.toml cannot name it" in capsys.readouterr().err
+    assert not into.exists()

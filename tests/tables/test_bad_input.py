@@ -588,6 +588,23 @@ CASES: list[Case] = [
     ),
     (
         "labels",
+        "half of a character",
+        {"t.jsonl": '{"item":"a","coder":"x","label":"1"}\n{"item":"b\\ud800","label":"1"}\n'},
+        {"files": ["t.jsonl"]},
+        [{}],
+        [
+            (
+                (
+                    "the line holds half of a character, which is no text (an escape from \\ud800 to "
+                    "\\udfff without its other half)"
+                ),
+                "t.jsonl, row 2",
+                "write the whole character, or take the escape out",
+            )
+        ],
+    ),
+    (
+        "labels",
         "a nested value",
         {"t.jsonl": '{"item":"a","coder":"x","label":["1","2"]}\n'},
         {"files": ["t.jsonl"]},

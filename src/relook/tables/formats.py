@@ -20,6 +20,8 @@ from relook.tables.headers import fold, letter
 
 #: A header is looked for in this many rows of a sheet, so that a title above it does no harm.
 _HEADER_WITHIN = 20
+#: Half of a character that takes two units in UTF-16; JSON can spell it, no text can hold it.
+_HALF = re.compile("[\ud800-\udfff]")
 _SHOWN_FORMAT = re.compile(r"(?P<whole>0+)(?P<places>\.0+)?(?P<percent>%?)")
 
 
@@ -342,6 +344,16 @@ def _json_record(line: str, where: Place, problems: list[Problem]) -> dict[str, 
         return {}
     record = {}
     for name, value in found.items():
+        if _HALF.search(name) or (isinstance(value, str) and _HALF.search(value)):
+            problems.append(
+                Problem(
+                    "the line holds half of a character, which is no text (an escape from \\ud800 "
+                    "to \\udfff without its other half)",
+                    where,
+                    "write the whole character, or take the escape out",
+                )
+            )
+            return {}
         if isinstance(value, dict | list):
             problems.append(
                 Problem(

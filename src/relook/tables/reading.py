@@ -18,7 +18,7 @@ import numpy.typing as npt
 import pandas as pd
 
 from relook.core.exact import IntArray
-from relook.errors import Place, RelookError, nearest
+from relook.errors import Place, Problem, RelookError, nearest
 from relook.tables.arrow_columns import arrow_column, coded_column
 from relook.tables.delimited import Cells, read_delimited
 from relook.tables.encodings import decode
@@ -331,7 +331,7 @@ def find_files(patterns: Sequence[str | Path], root: Path) -> tuple[Path, ...]:
     Raises
     ------
     RelookError
-        A pattern names no file.
+        A pattern names no file, or the name of a file is no text.
     """
     found: dict[Path, None] = {}
     for pattern in patterns:
@@ -356,4 +356,21 @@ def find_files(patterns: Sequence[str | Path], root: Path) -> tuple[Path, ...]:
         found.update(dict.fromkeys(Path(match) for match in files))
     if not found:
         raise RelookError("no files are named", mend="name a table")
+    odd = [path for path in found if not is_text(path.name)]
+    if odd:
+        raise RelookError.from_problems(
+            [
+                Problem(
+                    "the name of the file holds bytes that are no text in UTF-8",
+                    Place(ascii(str(path))),
+                    "rename the file",
+                )
+                for path in odd
+            ]
+        )
     return tuple(found)
+
+
+def is_text(name: str) -> bool:
+    """Whether a name can be written into a file; one of undecodable bytes cannot."""
+    return not any("\ud800" <= letter <= "\udfff" for letter in name)

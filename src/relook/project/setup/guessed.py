@@ -14,7 +14,7 @@ from relook.project.setup.folder import Project, write_whole
 from relook.project.setup.settings import SETTINGS_FILE, Settings
 from relook.project.setup.settings_text import settings_toml
 from relook.tables.guessing import Guess, Overrides, guess
-from relook.tables.reading import Doing, silently
+from relook.tables.reading import Doing, is_text, silently
 
 
 @dataclass(frozen=True, slots=True)
@@ -121,7 +121,15 @@ def write_settings(project: Project, *, force: bool = False) -> None:
             where=Place(str(file)),
             mend="go on with it, choose another folder, or add --force to replace its settings",
         )
-    write_whole(file, settings_toml(project.settings).encode("utf-8"))
+    text = settings_toml(project.settings)
+    if not is_text(text):
+        raise RelookError(
+            "the way to a table leads through a folder whose name holds bytes that are no text in "
+            f"UTF-8, so {SETTINGS_FILE} cannot name it",
+            where=Place(ascii(str(project.root))),
+            mend="rename the folder, or move the tables into the project folder",
+        )
+    write_whole(file, text.encode("utf-8"))
 
 
 @contextlib.contextmanager
