@@ -154,7 +154,12 @@ def _writable(file: IO[str]) -> IO[str]:
     terminal of few characters, the others are written as escapes.
     """
     reconfigure = getattr(file, "reconfigure", None)
-    if reconfigure is None or _is_unicode(file):
+    if reconfigure is None:
+        return file
+    if _is_unicode(file):
+        # Half a character, as in the name of a file in another encoding, is all it could not take.
+        if getattr(file, "errors", None) == "strict":
+            reconfigure(errors="backslashreplace")
         return file
     if file.isatty() or "PYTHONIOENCODING" in os.environ:
         reconfigure(errors="backslashreplace")
