@@ -306,3 +306,19 @@ def test_ordinal_parts_of_huge_counts_do_not_overflow():
         coder_parts(agreement).contribution, [float(part) for part in per_coder], rtol=1e-13
     )
     assert agreement.observed_disagreement == float(sum(per_coder))
+
+
+def test_pairs_of_coders_add_up_however_often_they_are_joined(monkeypatch):
+    """Sums of runs of labels, added up after every run, are those added up once (1e-12)."""
+    rng = np.random.default_rng(21)
+    labels = CodedLabels.from_codes(
+        np.repeat(np.arange(400), 4), rng.integers(0, 5, 1600), np.tile(np.arange(4), 400)
+    )
+    agreement = measure_agreement(labels, DIFFERENCE_FUNCTIONS["nominal"])
+    once = coder_pair_parts(agreement)
+    monkeypatch.setattr("relook.core.labels.BLOCK", 40)
+    monkeypatch.setattr("relook.core.coder_parts._MOST_PENDING", 1)
+    often = coder_pair_parts(agreement)
+    assert often.first.tolist() == once.first.tolist()
+    assert often.n_items.tolist() == once.n_items.tolist()
+    assert often.contribution == pytest.approx(once.contribution, rel=1e-12)

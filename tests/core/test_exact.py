@@ -5,6 +5,7 @@ from fractions import Fraction
 import numpy as np
 import pytest
 
+from relook.core import exact
 from relook.core.exact import (
     dot,
     group_sums,
@@ -71,3 +72,13 @@ def test_grouped_sums_of_mixed_sizes():
         exact = sum(Fraction(term) for term in terms[group == code].tolist())
         assert found == pytest.approx(float(exact), rel=1e-14)
     assert grouped_sums(np.array([0, 1]), np.zeros(2), 2).tolist() == [0, 0]
+
+
+@pytest.mark.parametrize(("n", "size"), [(0, 3), (10, 3), (101, 7), (101, 60)])
+def test_codes_are_counted_in_runs_as_at_once(n, size, monkeypatch):
+    """With runs of ten, narrow codes too; a code that never occurs counts 0."""
+    monkeypatch.setattr(exact, "_RUN", 10)
+    codes = np.random.default_rng(n).integers(0, max(1, size - 1), n).astype(np.int8)
+    got = exact.tally(codes, size)
+    assert got.tolist() == np.bincount(codes, minlength=size).tolist()
+    assert got[-1] == 0

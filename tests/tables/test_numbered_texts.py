@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from pathlib import Path
 
 import numpy as np
 import pandas as pd
@@ -17,6 +18,7 @@ from relook.tables.numbered_texts import (
     in_order_of_appearance,
     numbers_of_texts,
 )
+from relook.tables.reading import read_table
 
 
 def held(texts: Sequence[str]) -> TextBytes:
@@ -97,3 +99,42 @@ def test_a_column_of_ids_is_coded_by_numbers_as_by_hashing(monkeypatch: pytest.M
     few = pa.chunked_array([pa.array(["yes", "no"] * 5000)])
     assert arrow_columns._coded_by_numbers(few) is None
     assert arrow_columns._coded_by_numbers(pa.chunked_array([pa.array([*texts, None])])) is None
+
+
+def test_columns_that_are_codes_already_are_renumbered() -> None:
+    """Dictionaries of their own in each chunk, texts that no row has, blanks: as by hashing."""
+    pa = pytest.importorskip("pyarrow", reason="the extra `fast` is not installed")
+    one = pa.DictionaryArray.from_arrays(pa.array([2, 0, 2], pa.int32()), ["a", "unused", " "])
+    other = pa.DictionaryArray.from_arrays(pa.array([1, 0, 1], pa.int32()), ["c", "a"])
+    column = pa.chunked_array([one, other])
+    codes, texts = arrow_columns.coded_column(column)
+    assert [texts[code] for code in codes] == [" ", "a", " ", "a", "c", "a"]
+    assert texts.tolist() == [" ", "a", "c"]
+    blank = arrow_columns.maybe_blank(column)
+    assert blank.tolist() == [True, False, True, False, False, False]
+    none = arrow_columns.coded_column(pa.chunked_array([], pa.dictionary(pa.int32(), pa.string())))
+    assert [each.size for each in none] == [0, 0]
+
+
+def test_tables_of_few_texts_are_read_alike(tmp_path: Path) -> None:
+    """A Parquet column that is kept as numbers into its texts reads as its CSV does."""
+    pa = pytest.importorskip("pyarrow", reason="the extra `fast` is not installed")
+    from pyarrow import parquet
+
+    rng = np.random.default_rng(8)
+    n = 5000
+    columns = {
+        "item": [f"i{at % 1700}" for at in range(n)],
+        "coder": [f"c{at // 1700}" for at in range(n)],
+        "label": rng.choice(["p", "q", "", "NA", "r s"], n).tolist(),
+    }
+    parquet.write_table(pa.table(columns), tmp_path / "t.parquet")
+    pd.DataFrame(columns).to_csv(tmp_path / "t.csv", index=False)
+    held, plain = (read_table(Path(f"t.{end}"), tmp_path) for end in ("parquet", "csv"))
+    assert str(arrow_columns.arrow_column(held.frame[2]).type).startswith("dictionary")
+    for column in range(3):
+        codes, texts = held.coded(column)
+        want_codes, want_texts = plain.coded(column)
+        assert codes.tolist() == want_codes.tolist()
+        assert texts.tolist() == want_texts.tolist()
+        assert held.texts(column).tolist() == columns[held.header[column]]

@@ -18,7 +18,7 @@ from fractions import Fraction
 import numpy as np
 
 from relook.core.differences import DifferenceFunction, Differences, Values
-from relook.core.exact import BoolArray, ExactArray, FloatArray, IntArray, dot
+from relook.core.exact import BoolArray, ExactArray, FloatArray, IntArray, dot, tally
 from relook.core.labels import CodedLabels
 from relook.core.profiles import Profiles, collapse
 from relook.errors import RelookError
@@ -100,7 +100,7 @@ class Agreement:
         """Coders with a label at least; 0 where the table holds counts."""
         if self.labels.coder_index is None:
             return 0
-        return int(np.count_nonzero(np.bincount(self.labels.coder_index)))
+        return int(np.count_nonzero(tally(self.labels.coder_index, self.labels.n_coders)))
 
 
 def measure_agreement(

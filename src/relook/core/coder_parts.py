@@ -13,6 +13,9 @@ from relook.core.labels import CodedLabels
 from relook.core.summed import SummedAgreement
 from relook.errors import RelookError
 
+#: Sums of pairs of coders, found run by run, that are added up before more are found.
+_MOST_PENDING = 4_000_000
+
 
 def label_parts(agreement: Agreement) -> FloatArray:
     """Return each label's part of D_o.
@@ -118,6 +121,7 @@ def coder_pair_parts(agreement: Agreement) -> PairParts:
     keys: list[IntArray] = []
     parts: list[FloatArray] = []
     counts: list[IntArray] = []
+    pending = 0
     for run, first, second, apart, part in _label_pairs(agreement):
         coder = np.asarray(run.coder_index, dtype=np.int64)
         low, high = np.minimum(coder[first], coder[second]), np.maximum(coder[first], coder[second])
@@ -125,6 +129,10 @@ def coder_pair_parts(agreement: Agreement) -> PairParts:
         keys.append(found)
         parts.append(grouped_sums(which[apart], part, found.size))
         counts.append(often)
+        pending += found.size
+        if pending > _MOST_PENDING:
+            key, added, count = _joined(keys, parts, counts)
+            keys, parts, counts, pending = [key], [added], [count], 0
     key, part, count = _joined(keys, parts, counts)
     first, second = np.divmod(key, max(1, n_coders))
     return PairParts(first, second, part, shares(agreement, part), count)

@@ -22,7 +22,7 @@ import numpy as np
 from relook.core.agreement import Agreement
 from relook.core.consensus import Consensus
 from relook.core.differences import Jaccard, Masi
-from relook.core.exact import BoolArray, FloatArray, IntArray
+from relook.core.exact import BoolArray, FloatArray, IntArray, tally
 from relook.core.labels import CodedLabels
 from relook.errors import RelookError
 
@@ -154,13 +154,13 @@ def no_ground(agreement: Agreement) -> str | None:
         return NO_CODERS
     n_coders = max(1, labels.n_coders)
     item, coder = _once_each(labels, n_coders)
-    coders_of_item = np.bincount(item, minlength=labels.n_items)
+    coders_of_item = tally(item, labels.n_items)
     sharing = coders_of_item[item] >= 2
     if np.count_nonzero(np.bincount(coder[sharing])) < 3:
         return TOO_FEW_CODERS
     if int(coders_of_item.max()) < 3:
         return NO_THIRD_LABEL
-    k = int(np.count_nonzero(np.bincount(labels.value_index)))
+    k = int(np.count_nonzero(np.bincount(agreement.profiles.value_index)))
     if k * max(labels.n_items, n_coders * k) > _LARGEST_TABLE:
         return TOO_LARGE
     return None

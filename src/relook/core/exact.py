@@ -19,6 +19,8 @@ BoolArray = npt.NDArray[np.bool_]
 ExactArray = npt.NDArray[Any]
 
 _LIMIT = 2**62
+#: Codes that are counted at once.
+_RUN = 1 << 22
 
 
 def largest(values: ExactArray) -> int:
@@ -105,6 +107,27 @@ def grouped_sums(group: IntArray, terms: FloatArray, n_groups: int) -> FloatArra
     high = np.bincount(group, weights=upper, minlength=n_groups)
     low = np.bincount(group, weights=terms - upper, minlength=n_groups)
     return np.asarray(high + low, dtype=np.float64)
+
+
+def tally(codes: IntArray, n: int) -> IntArray:
+    """Count how often each code occurs, as `numpy.bincount` does, which copies narrow codes first.
+
+    Parameters
+    ----------
+    codes : int array of shape (n_codes,), none negative
+    n : int
+        Above every code.
+
+    Returns
+    -------
+    int array of shape (n,)
+    """
+    # Each run adds a count for every code, so runs are no shorter than that.
+    run = max(n, _RUN)
+    found = np.bincount(codes[:run], minlength=n)
+    for begin in range(run, codes.size, run):
+        found += np.bincount(codes[begin : begin + run], minlength=n)
+    return found
 
 
 def numbered(keys: IntArray, limit: int) -> tuple[IntArray, IntArray, IntArray]:

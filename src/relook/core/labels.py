@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from relook.core.exact import BoolArray, IntArray
+from relook.core.exact import BoolArray, IntArray, tally
 from relook.errors import RelookError
 
 #: Labels in one run of `CodedLabels.blocks`.
@@ -104,7 +104,7 @@ class CodedLabels:
     @property
     def labels_per_item(self) -> IntArray:
         """The number of labels of each item, shape (n_items,)."""
-        return np.bincount(self.item_index, minlength=self.n_items)
+        return tally(self.item_index, self.n_items)
 
     def of_item(self, item: int) -> slice:
         """Return where the labels of one item stand."""

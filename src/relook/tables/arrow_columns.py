@@ -7,6 +7,7 @@ whether the extra is installed.
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Mapping
 from typing import Any
 
@@ -95,6 +96,8 @@ def coded_column(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]]:
     """Return an Arrow column as codes into its distinct texts, in order of first appearance."""
     import pyarrow as pa
 
+    if pa.types.is_dictionary(column.type):
+        return _renumbered(column.unify_dictionaries())
     numbered = _coded_by_numbers(column)
     if numbered is not None:
         return numbered
@@ -105,6 +108,16 @@ def coded_column(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]]:
     texts = encoded.chunk(encoded.num_chunks - 1).dictionary.to_numpy(zero_copy_only=False)
     codes = pa.chunked_array([chunk.indices for chunk in encoded.chunks]).to_numpy()
     return codes, np.asarray(texts, dtype=object)
+
+
+def _renumbered(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]]:
+    """Bring a column that is codes already, under one dictionary, to the order of appearance."""
+    if len(column) == 0:
+        return np.zeros(0, dtype=np.int32), np.empty(0, dtype=object)
+    texts = column.chunk(0).dictionary.to_numpy(zero_copy_only=False)
+    held = np.concatenate([chunk.indices.to_numpy() for chunk in column.chunks])
+    codes, first = in_order_of_appearance(held, len(texts))
+    return codes, np.asarray(texts[held[first]], dtype=object)
 
 
 def _coded_by_numbers(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]] | None:
@@ -121,12 +134,21 @@ def _coded_by_numbers(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]] |
     if found is None:
         return None
     codes, first = in_order_of_appearance(*found)
-    texts, begin = [], 0
-    for chunk in column.chunks:
-        low, high = np.searchsorted(first, [begin, begin + len(chunk)])
-        texts.append(chunk.take(pa.array(first[low:high] - begin)))
-        begin += len(chunk)
+    # In the type of `first`, which would be brought to another one whole.
+    begins = np.cumsum([0, *map(len, column.chunks)], dtype=first.dtype)
+    cuts = np.searchsorted(first, begins).tolist()
+    texts = [
+        chunk.take(pa.array(first[low:high] - begin))
+        for chunk, begin, low, high in zip(column.chunks, begins, cuts, cuts[1:], strict=False)
+    ]
     return codes, np.asarray(pa.chunked_array(texts).to_numpy(), dtype=object)
+
+
+def release_memory() -> None:
+    """Give back what columns took that are gone; pyarrow keeps it for itself otherwise."""
+    loaded = sys.modules.get("pyarrow")
+    if loaded is not None:
+        loaded.default_memory_pool().release_unused()
 
 
 def _text_bytes(chunk: Any) -> TextBytes:
@@ -142,6 +164,9 @@ def _text_bytes(chunk: Any) -> TextBytes:
 
 def maybe_blank(column: Any) -> BoolArray:
     """Return which cells of an Arrow column are empty or begin as a blank one may, by its bytes."""
+    if str(column.type).startswith("dictionary"):
+        codes, texts = coded_column(column)
+        return np.asarray([not text.strip() for text in texts], dtype=bool)[codes]
     found = [np.zeros(0, dtype=bool)]
     space = np.zeros(256, dtype=bool)
     space[list(_SPACES)] = True

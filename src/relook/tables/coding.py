@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from relook.core.exact import BoolArray, IntArray
+from relook.core.exact import BoolArray, IntArray, tally
 from relook.core.labels import CodedLabels
 from relook.errors import Place
 from relook.tables.findings import Findings
@@ -52,7 +52,7 @@ def code_variable(variable: Variable, flat: Flat, context: Context) -> Coding | 
     Coding or None
         None where the variable's declaration cannot be used.
     """
-    used = np.flatnonzero(np.bincount(flat.text, minlength=len(flat.texts)))
+    used = np.flatnonzero(tally(flat.text, len(flat.texts)))
     coded = context.findings.attempt(
         lambda: code_values(variable, [str(text) for text in flat.texts[used]])
     )

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import io
 import json
 import re
 from collections.abc import Sequence
@@ -20,6 +19,8 @@ from relook.tables.headers import fold, letter
 
 #: A header is looked for in this many rows of a sheet, so that a title above it does no harm.
 _HEADER_WITHIN = 20
+#: A column of text that takes fewer bytes a row is read as numbers into its few texts.
+_FEW_BYTES = 3
 #: Half of a character that takes two units in UTF-16; JSON can spell it, no text can hold it.
 _HALF = re.compile("[\ud800-\udfff]")
 _SHOWN_FORMAT = re.compile(r"(?P<whole>0+)(?P<places>\.0+)?(?P<percent>%?)")
@@ -240,7 +241,8 @@ def read_parquet(data: bytes, file: str) -> Cells:
             mend='run: pip install "relook[fast]", or give the table as CSV',
         ) from None
     try:
-        table = pq.read_table(io.BytesIO(data))
+        held = pq.ParquetFile(pa.BufferReader(data))
+        table = pq.read_table(pa.BufferReader(data), read_dictionary=_of_few_texts(held))
     except (pa.ArrowException, OSError):
         raise RelookError(
             "the Parquet file is damaged",
@@ -262,11 +264,25 @@ def read_parquet(data: bytes, file: str) -> Cells:
     return drop_blank(Cells(tuple(table.column_names), frame, rows, "Parquet"))
 
 
+def _of_few_texts(file: Any) -> list[str]:
+    """The columns that take so few bytes a row that only the numbers of texts can be in them."""
+    held = file.metadata
+    sizes = [0] * held.num_columns
+    for group in range(held.num_row_groups):
+        for at in range(held.num_columns):
+            sizes[at] += held.row_group(group).column(at).total_uncompressed_size
+    paths = [held.schema.column(at).path for at in range(held.num_columns)]
+    most = _FEW_BYTES * held.num_rows
+    return [path for path, size in zip(paths, sizes, strict=True) if size < most]
+
+
 def _arrow_texts(column: Any, pa: Any) -> Any:
     """An Arrow column as one of texts: whole floats without ".0", missing values empty."""
     if pa.types.is_dictionary(column.type):
+        if column.type.value_type == pa.string() and column.null_count == 0:
+            return column
         column = column.cast(column.type.value_type)
-    if pa.types.is_string(column.type):
+    if pa.types.is_string(column.type) or pa.types.is_large_string(column.type):
         return column if column.null_count == 0 else column.fill_null("")
     # What a value is called is worked out once for each that occurs.
     encoded = column.combine_chunks().dictionary_encode(null_encoding="encode")

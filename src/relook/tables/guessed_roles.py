@@ -98,9 +98,6 @@ def view_of(tables: Sequence[Table], sketches: Sequence[list[Sketch]]) -> View:
         if all(name in found for found in folded):
             texts = np.concatenate([found[name].texts[found[name].codes] for found in folded])
             codes, distinct = pd.factorize(texts)
-            counts = np.bincount(codes, minlength=len(distinct))
-            columns.append(
-                Sketch(one.at, one.header, codes, np.asarray(distinct, dtype=object), counts)
-            )
+            columns.append(Sketch(one.at, one.header, codes, np.asarray(distinct, dtype=object)))
     file = np.repeat(np.arange(len(tables)), [table.n_rows for table in tables])
     return View(columns, file, place, tables[0].header)

@@ -11,6 +11,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 
 from relook.errors import RelookError, listed
+from relook.tables.arrow_columns import release_memory
 from relook.tables.guessed_columns import guess_roles
 from relook.tables.guessed_items import guess_items
 from relook.tables.guessed_roles import Roles
@@ -225,6 +226,8 @@ def guess(
         # In a workbook the settings may mean another sheet than the one that was looked at.
         if table.sheet is None
     }
+    tables.clear()
+    release_memory()
     return Guess(source, variables, items, tuple(said), tuple(lines), unused, read)
 
 

@@ -171,10 +171,18 @@ def in_order_of_appearance(numbers: IntArray, size: int) -> tuple[IntArray, IntA
     """
     n = numbers.size
     where = np.full(size, n, dtype=np.int32)
-    # Written from the last to the first, so that the first one stands.
-    for end in range(n, 0, -_BLOCK):
-        begin = max(0, end - _BLOCK)
-        where[numbers[begin:end][::-1]] = np.arange(end - 1, begin - 1, -1, dtype=np.int32)
+    n_found = 0
+    for begin in range(0, n, _BLOCK):
+        block = numbers[begin : begin + _BLOCK]
+        at = np.flatnonzero(where[block] == n)
+        if at.size == 0:
+            continue
+        new, place = block[at], (begin + at).astype(np.int32)
+        # Written from the last to the first, so that the first one stands.
+        where[new[::-1]] = place[::-1]
+        n_found += int(np.count_nonzero(where[new] == place))
+        if n_found == size:
+            break
     first = np.sort(where[where < n])
     code = where  # its room is used again
     code[numbers[first]] = np.arange(first.size, dtype=np.int32)

@@ -9,7 +9,7 @@ from functools import cached_property
 
 import numpy as np
 
-from relook.core.exact import BoolArray, IntArray
+from relook.core.exact import BoolArray, IntArray, tally
 from relook.tables.headers import fold
 from relook.tables.numbers import parse_number
 from relook.tables.reading import Table, Texts
@@ -144,14 +144,17 @@ class Sketch:
     codes : int array of shape (n_rows,)
         Into `texts`.
     texts : object array of shape (n_texts,)
-    counts : int array of shape (n_texts,)
     """
 
     at: int
     header: str
     codes: IntArray
     texts: Texts
-    counts: IntArray
+
+    @cached_property
+    def counts(self) -> IntArray:
+        """How often each text occurs, shape (n_texts,)."""
+        return tally(self.codes, len(self.texts))
 
     @cached_property
     def filled(self) -> BoolArray:
@@ -240,9 +243,7 @@ def sketch(table: Table) -> list[Sketch]:
     columns = [at for at, header in enumerate(table.header) if header.strip()]
 
     def of_column(at: int) -> Sketch:
-        codes, texts = table.coded(at)
-        counts = np.bincount(codes, minlength=len(texts))
-        return Sketch(at, table.header[at], codes, texts, counts)
+        return Sketch(at, table.header[at], *table.coded(at))
 
     # Coding a column leaves the interpreter free, and one of ids takes as long as all others.
     with ThreadPoolExecutor(2) as both:

@@ -137,7 +137,7 @@ def is_quick(agreement: Agreement) -> bool:
     """Whether doubt is estimated within seconds, so that it may break ties unasked."""
     if isinstance(agreement, SummedAgreement):
         return False
-    used = np.count_nonzero(np.bincount(agreement.labels.value_index))
+    used = np.count_nonzero(np.bincount(agreement.profiles.value_index))
     return int(used) * agreement.n_labels <= QUICK_DOUBT
 
 

@@ -69,7 +69,8 @@ class Loaded:
 
     def item_numbers(self, items: Sequence[str]) -> IntArray:
         """Return the index of each item's id, -1 for those without an entry in the label table."""
-        return self._lookup.numbers(items)
+        # Nothing is looked up in a first round, and so no hash is taken for it.
+        return self._lookup.numbers(items) if len(items) else np.zeros(0, dtype=np.int64)
 
     @cached_property
     def _lookup(self) -> ItemLookup:
