@@ -150,7 +150,8 @@ class Rescored:
     ----------
     variable : str
     alpha : float or None
-        Of the labels that coders made independently; decisions do not enter.
+        Of the labels as they were before the first round, and a reliability only if coders made
+        them independently; decisions do not enter.
     interval : tuple of (float, float) or None
         Its 95 % interval.
     agreement_after : float or None
@@ -158,8 +159,9 @@ class Rescored:
         decided. There is no interval of the change.
     n_settled, n_cannot_be_coded, n_split : int
     audit_share : float or None
-        Of the items that would be released without a decision: the share that the random audit says
-        would be ruled otherwise, weighed by the sizes of the strata.
+        Of the items that would be released with a label but no decision: the share that the random
+        audit says would be ruled otherwise, weighed by the sizes of the strata. Items whose labels
+        tie are released blank, and left out.
     audit_interval : tuple of (float, float) or None
     """
 
