@@ -16,7 +16,7 @@ from relook.project.archive.rounds import Round, RoundRow, RoundStratum, read_ro
 from relook.project.archive.settlements import settlements
 from relook.project.outcome import rescore_sentences as sentences
 from relook.project.outcome.audit_findings import audits_of
-from relook.project.outcome.moves import ReasonCount
+from relook.project.outcome.moves import Overlap, ReasonCount
 from relook.project.outcome.rescore_tables import rescore_object
 from relook.project.outcome.rescoring import rescore
 from relook.project.setup.loading import load
@@ -373,6 +373,19 @@ def test_overlap_is_counts_under_30_items_and_an_alpha_above(tmp_path):
         want = by_definition.alpha_by_definition(table, by_definition.nominal).alpha
         assert held.alpha == pytest.approx(float(want), rel=1e-12)
         assert f"Their own alpha is {held.alpha:.3f} over 30 of these items" in said
+
+
+def test_a_caution_is_given_where_adjudicators_hardly_agree(tmp_path):
+    """2 of 5 shared items: said on top; 3 of 5, and 1 of 4, are not."""
+    for shared, agree, cautioned in ((5, 2, True), (5, 3, False), (4, 1, False)):
+        overlap = Overlap(
+            n_items=shared, n_agree=agree, n_adjudicators=2, alpha=None,
+            n_labelled_items=shared, undefined_because=None,
+        )  # fmt: skip
+        said = sentences.overlap_caution(overlap)
+        assert (said is not None) is cautioned
+        if said is not None:
+            assert said.startswith("Caution: adjudicators agree on 2 of the 5 items")
 
 
 def test_second_opinions_do_not_count_as_overlap(tmp_path):

@@ -63,6 +63,8 @@ def _variable(held: Rescore, scored: VariableRescore) -> list[RenderableType]:
     parts += [Text(""), note(sentences.states_sentence(scored))]
     unchanged = sentences.unchanged_sentence(scored)
     parts += [note(unchanged)] if unchanged else []
+    caution = sentences.overlap_caution(scored.overlap)
+    parts += [note(caution)] if caution else []
     parts += _moves(scored)
     parts += _reasons(scored)
     parts += _audit(scored)

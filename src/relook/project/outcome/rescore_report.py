@@ -29,6 +29,7 @@ def report_of(held: Rescore, stamp: str) -> Report:
             sentences.states_sentence(scored),
             sentences.unchanged_sentence(scored),
             sentences.overlap_sentence(scored.overlap),
+            sentences.overlap_caution(scored.overlap),
         ]
         notes += [f"{scored.name}: {said}" if several else said for said in own if said]
     stale = sentences.stale_sentence(held)

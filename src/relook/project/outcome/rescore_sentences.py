@@ -18,6 +18,9 @@ LEAST_ITEMS_WITH_REASON = 10
 LEAST_ITEMS_OF_A_REASON = 5
 LEAST_SHARE_OF_A_REASON = 0.2
 
+#: So many items that adjudicators share are enough to caution of how little they agree.
+LEAST_ITEMS_OF_A_CAUTION = 5
+
 #: What each of the reasons that relook.toml has by default allows to conclude. Reasons of one's own
 #: are counted, and nothing is concluded from them.
 CONCLUSIONS = {
@@ -190,6 +193,17 @@ def audit_cautions(held: AuditFindings, n_sent_since: int) -> tuple[str, ...]:
             f"audit would show {SLIP_EXAMPLE.share_shown:.1%}."
         )
     return tuple(said)
+
+
+def overlap_caution(held: Overlap) -> str | None:
+    """Say it where adjudicators agree on fewer than half of 5 shared items or more (our choice)."""
+    if held.n_items < LEAST_ITEMS_OF_A_CAUTION or 2 * held.n_agree >= held.n_items:
+        return None
+    return (
+        f"Caution: adjudicators agree on {held.n_agree:,} of the {held.n_items:,} items that "
+        "several of them ruled on, so decisions may be no steadier than the labels that they replace. See "
+        "to the splits and to the instructions before more is decided."
+    )
 
 
 def overlap_sentence(held: Overlap) -> str:
