@@ -201,8 +201,8 @@ def overlap_caution(held: Overlap) -> str | None:
         return None
     return (
         f"Caution: adjudicators agree on {held.n_agree:,} of the {held.n_items:,} items that "
-        "several of them ruled on, so decisions may be no steadier than the labels that they replace. See "
-        "to the splits and to the instructions before more is decided."
+        "several of them ruled on, so decisions may be no steadier than the labels that they "
+        "replace. See to the splits and to the instructions before more is decided."
     )
 
 
