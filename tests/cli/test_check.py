@@ -24,3 +24,27 @@ def test_findings_with_one_mend_stand_together(tmp_path, capsys):
     assert '"Green"' not in reds
     (greens,) = [block for block in blocks if 'mend: write "green" throughout' in block]
     assert '"Green" (1)' in greens
+
+
+def test_a_check_says_that_a_round_is_out(tmp_path, capsys):
+    """Labels mended now are not those of the round; with nothing back, the way out is starting over."""
+    table = tmp_path / "labels.csv"
+    rows = [
+        f"i{at:02d},{coder},{'Red' if (at, coder) == (1, 'a') else 'red'}"
+        for at in range(14)
+        for coder in "ab"
+    ]
+    rows += [f"i{at:02d},c,{'green' if at % 3 else 'red'}" for at in range(14)]
+    table.write_text("item,coder,label\n" + "\n".join(rows) + "\n", encoding="utf-8")
+    assert run(["queue", str(table)]) == 0
+    assert "differ by next to nothing" in " ".join(capsys.readouterr().out.split())
+    project = tmp_path / "labels-relook"
+    assert run(["check", str(project)]) == 0
+    assert "A round of this project is out" in capsys.readouterr().err
+    table.write_text(table.read_text(encoding="utf-8").replace("Red", "red"), encoding="utf-8")
+    assert run(["score", str(project), "--require", ".1"]) != 0
+    capsys.readouterr()
+    assert run(["release", str(project)]) == 2
+    said = capsys.readouterr().err
+    assert "no decision is in yet, so nothing is lost by starting over" in said
+    assert "take the folder rounds away and queue anew" in said

@@ -247,8 +247,9 @@ def test_the_methods_statement_carries_each_figure_with_its_condition(project):
         ),
         (
             "5 items were sent for a second look: 4 chosen by their contribution to the disagreement "
-            "and 1 drawn at random as an audit. 1 of them has no ruling, and keeps its coders' "
-            "labels. 2 adjudicators ruled on them, shown the competing "
+            "(ties by doubt where it is defined, then by intensity) and 1 drawn at random as an audit. "
+            "1 of them has no ruling and is released like "
+            "items that were not sent. 2 adjudicators ruled on the others, shown the competing "
             "labels, but not who or how many had given them: 1 item was settled, 1 found impossible "
             "to code, 1 remained split."
         ),
@@ -260,7 +261,7 @@ def test_the_methods_statement_carries_each_figure_with_its_condition(project):
             "1 ruling against unanimous coders was not confirmed by a second adjudicator and not "
             "applied."
         ),
-        "decided items agree by construction, so this is not a reliability.",
+        "decided items agree by construction, so this is not a reliability. Had each of them taken",
         (
             "no share is estimated, as no audit item was ruled on among the items that are not queued "
             "or single."

@@ -64,11 +64,17 @@ def what_this_is(worksheet: Worksheet) -> str:
 
 def steps(worksheet: Worksheet) -> list[str]:
     """Return what to do, one step after the other."""
-    book = f"Read the sheet “{SHEET_CODE_BOOK}” once from top to bottom"
+    meant = any(variable.code_book for variable in worksheet.variables)
+    book = (
+        f"Read the sheet “{SHEET_CODE_BOOK}” once from top to bottom"
+        if meant
+        else f"The sheet “{SHEET_CODE_BOOK}” lists what may be answered: look at it once"
+    )
     shows_labels = worksheet.reveal != "nothing" and not worksheet.is_coding
+    read = "Read the item." if worksheet.shown_columns else "Look the item up by its id."
     go_on = (
-        f"Go to the sheet “{worksheet.fields_sheet}”. Each row asks one thing of one item. Read "
-        f"the item.{' Then look at the labels beside it.' if shows_labels else ''}"
+        f"Go to the sheet “{worksheet.fields_sheet}”. Each row asks one thing of one item. "
+        f"{read}{' Then look at the labels beside it.' if shows_labels else ''}"
     )
     send = (
         "Save the file and send it back as it is. Half of it is better than nothing: rows you "

@@ -33,8 +33,9 @@ def check(
 ) -> None:
     """Look for anything wrong with the labels and items: errors, warnings and notes."""
     with running(quiet=quiet, debug=debug) as terminal:
-        from relook.cli.screens.check import check_object, check_screen
+        from relook.cli.screens.check import WORKSHEETS_ARE_OUT, check_object, check_screen
         from relook.cli.targets import open_target
+        from relook.project.archive.rounds import read_rounds
         from relook.project.setup.folder import write_whole
         from relook.tables.checking import check_tables
         from relook.tables.results import problems_csv
@@ -51,5 +52,7 @@ def check(
             terminal.json(check_object(checked))
         else:
             terminal.data(check_screen(checked))
+            if checked.problems and settings.project and read_rounds(project):
+                terminal.say(WORKSHEETS_ARE_OUT)
         if any(problem.severity == "error" for problem in checked.problems):
             raise typer.Exit(int(ExitCode.FALLS_SHORT))

@@ -15,6 +15,11 @@ from relook.errors import Problem
 from relook.tables.checking import Checked
 
 _SHOWN = 20
+WORKSHEETS_ARE_OUT = (
+    "A round of this project is out, and shows the labels as they were: files that are mended now "
+    "are no longer those that alpha may be taken from. Mend them if nothing is back yet, and queue "
+    "anew with the folder rounds taken away; else leave them, and decide in the worksheets."
+)
 
 
 def check_screen(checked: Checked) -> RenderableType:

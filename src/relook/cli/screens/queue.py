@@ -59,19 +59,7 @@ def queue_screen(run: QueueRun) -> RenderableType:
         )
     parts += [Text(""), heading(f"{verb}"), _files(run)]
     parts += [note(f"{said}.") for said in planned.plan.said]
-    bare = [
-        held.variable.name
-        for held in run.loaded.labels.variables.values()
-        if held.variable.code_book is None
-    ]
-    if bare:
-        parts.append(
-            note(
-                f"No code book says what the labels of {', '.join(bare)} mean, so the worksheets "
-                "list them bare: name one by code_book in relook.toml (columns label, meaning, "
-                "example)."
-            )
-        )
+    parts += [note(f"Caution: {said}") for said in run.cautions]
     if planned.plan.unplanned:
         items = ", ".join(held.item for held in planned.plan.unplanned[:12])
         parts.append(note(f"Left for you: {items}."))

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from relook.errors import Place, RelookError, listed
+from relook.project.archive.record import read_record
 from relook.project.archive.rounds import Round, read_rounds
 from relook.project.setup.loading import Loaded, labels_digest, labels_of_item
 
@@ -73,6 +74,13 @@ def _changed_labels(loaded: Loaded, rounds: Sequence[Round], changed: Sequence[s
         "the label files are not those of the first round, so alpha would not be of independently "
         f"made labels: {listed(changed)}; {said}"
     )
+    if not read_record(loaded.project).decisions:
+        mend = (
+            "no decision is in yet, so nothing is lost by starting over: take the folder "
+            f"{loaded.project.relative(loaded.project.rounds_folder)} away and queue anew. "
+            "Or put the files of the first round back"
+        )
+        return RelookError(message, where=Place(changed[0]), mend=mend)
     return RelookError(
         message,
         where=Place(changed[0]),

@@ -6,7 +6,6 @@ from collections.abc import Mapping, Sequence
 
 from relook import __version__
 from relook.core.agreement import Agreement
-from relook.core.audit import SLIP_EXAMPLE
 from relook.core.doubt import SHRINK
 from relook.core.resampling import IntervalResult
 from relook.project.corrections.label_versions import LabelVersion
@@ -193,7 +192,7 @@ def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
     by = _counted(held.n_adjudicators, "adjudicator", "adjudicators")
     said = [
         _sent(held, rescored),
-        f"{by} ruled on them{shown}: {', '.join(ways)}.",
+        f"{by} ruled on {'the others' if _n_unruled(held) else 'them'}{shown}: {', '.join(ways)}.",
         _own_items(rescored),
         _padded(held, rescored),
         sentences.overlap_sentence(held.overlap),
@@ -206,8 +205,9 @@ def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
         )
     if after.agreement is not None:
         said.append(
-            f"With the decisions put in, agreement in the corrected data is {after.agreement:.3f}; "
-            "decided items agree by construction, so this is not a reliability."
+            f"With the decisions put in, agreement in the corrected data is {after.agreement:.3f} "
+            f"over {after.n_pairable_items:,} items{_before(held)}; decided items agree by "
+            f"construction, so this is not a reliability.{_at_random(held)}"
         )
     if rescored.stale:
         own = [each for each in rescored.stale if each.decision.variable == held.name]
@@ -219,6 +219,10 @@ def _decisions(held: VariableRescore, rescored: Rescore) -> list[str]:
     return said
 
 
+def _n_unruled(held: VariableRescore) -> int:
+    return held.n_waiting + held.states["open"]
+
+
 def _sent(held: VariableRescore, rescored: Rescore) -> str:
     """How many items were sent for what reason, and how many nobody ruled on."""
     sent = {row.item for each in rescored.rounds for row in each.rows if row.variable == held.name}
@@ -227,10 +231,10 @@ def _sent(held: VariableRescore, rescored: Rescore) -> str:
         return ""
     parts = [f"{len(sent) - n_audit:,} chosen by {_chosen(rescored)}"]
     parts += [f"{n_audit:,} drawn at random as an audit"] if n_audit else []
-    n_unruled = held.n_waiting + held.states["open"]
+    n_unruled = _n_unruled(held)
     waiting = (
-        f" {_counted(n_unruled, 'of them has', 'of them have')} no ruling, and "
-        f"{'keeps its' if n_unruled == 1 else 'keep their'} coders' labels."
+        f" {_counted(n_unruled, 'of them has', 'of them have')} no ruling and "
+        f"{'is' if n_unruled == 1 else 'are'} released like items that were not sent."
         if n_unruled
         else ""
     )
@@ -261,6 +265,23 @@ def _padded(held: VariableRescore, rescored: Rescore) -> str:
     )
 
 
+def _before(held: VariableRescore) -> str:
+    common = held.corrected.common.alpha
+    return "" if common is None else f" (alpha of the same items: {common:.3f})"
+
+
+def _at_random(held: VariableRescore) -> str:
+    """What settling alone brings, without which the figure before says nothing."""
+    drawn = held.any_label
+    if drawn is None:
+        return ""
+    low, high = f"{drawn.low:.3f}", f"{drawn.high:.3f}"
+    return (
+        " Had each of them taken one of its own labels at random, it would be "
+        f"{low if low == high else f'{low} to {high}'} ({drawn.draws} draws, seed {drawn.seed})."
+    )
+
+
 def _chosen(rescored: Rescore) -> str:
     """By what the rounds ranked items, in words."""
     words = {
@@ -272,7 +293,10 @@ def _chosen(rescored: Rescore) -> str:
     used = dict.fromkeys(
         str(held.settings.get("rank_by", "contribution")) for held in rescored.rounds
     )
-    return " and ".join(words[each] for each in used if each in words) or "the lead"
+    chosen = " and ".join(words[each] for each in used if each in words)
+    return (
+        f"{chosen} (ties by doubt where it is defined, then by intensity)" if chosen else "the lead"
+    )
 
 
 def _audit(held: AuditFindings, ties: str) -> str:
@@ -288,10 +312,16 @@ def _audit(held: AuditFindings, ties: str) -> str:
         return f"{said}; no share is estimated, as {result.undefined_because}."
     total = sum(part.n_items for part in result.strata)
     more = []
-    if held.n_left_out:
+    if held.n_unresolved:
         more.append(
-            f"{_counted(held.n_left_out, 'further item is', 'further items are')} released blank "
-            "because their labels tie, and not counted."
+            f"{_counted(held.n_unresolved, 'ruling', 'rulings')} among these, split or not "
+            "confirmed by a second adjudicator, may yet fall."
+        )
+    if held.n_left_out:
+        further = _counted(held.n_left_out, "further item", "further items")
+        more.append(
+            f"{further} among which the audit was drawn would be released blank because their "
+            f"labels tie, and {'is' if held.n_left_out == 1 else 'are'} not counted."
         )
     if held.n_ties and ties != "blank":
         more.append(
@@ -301,16 +331,13 @@ def _audit(held: AuditFindings, ties: str) -> str:
     if held.n_drawn > ruled + (held.n_ties if held.n_left_out else 0):
         more.append("Audit items without a ruling are taken as missing at random.")
     if otherwise:
-        more.append(
-            f"Adjudicators' slips count too: with {SLIP_EXAMPLE.true_share:.0%} of items wrong, "
-            f"{SLIP_EXAMPLE.slip_rate:.0%} slips would show as {SLIP_EXAMPLE.share_shown:.1%}."
-        )
+        more.append("Adjudicators' own slips are among those.")
     estimated = (
         f"{said}; weighted by the sizes of the strata (Begg & Greenes 1983), an estimated "
-        f"{result.share_ruled_otherwise:.1%} of the {total:,} items that are released with a "
-        f"label but no decision ({result.confidence_level:.0%} interval {result.low:.1%} to "
-        f"{result.high:.1%}; exact limits for finite strata, Buonaccorsi 1987, combined after "
-        "Zou et al. 2009)."
+        f"{result.share_ruled_otherwise:.1%} of the {total:,} items that would be released with a "
+        f"label had no audit item been ruled on ({result.confidence_level:.0%} interval "
+        f"{result.low:.1%} to {result.high:.1%}; exact limits for finite strata, Buonaccorsi 1987, "
+        "combined after Zou et al. 2009)."
     )
     return " ".join([estimated, *more])
 

@@ -287,8 +287,8 @@ def _notes(
     if rescored is not None:
         waiting = sum(each.n_waiting for each in rescored.variables)
         if waiting:
-            notes.append(f"{waiting:,} rows that were sent have no decision; their coders' labels "
-                         "are released.")  # fmt: skip
+            notes.append(f"{waiting:,} rows that were sent have no decision; they are released "
+                         "like items that were not sent.")  # fmt: skip
         if rescored.stale:
             notes.append(f"{len(rescored.stale):,} standing decisions were made on labels that "
                          "have changed since.")  # fmt: skip

@@ -3,5 +3,5 @@
 which items: queueing, round_items
 worksheets: sheets, issuing, mending
 the lead's workbook: overviews
-all of it under the lock: queue_run
+all of it under the lock: queue_run, cautions
 """

@@ -14,6 +14,7 @@ from relook.project.archive.rounds import read_rounds
 from relook.project.archive.settlements import settlements
 from relook.project.figures.score_tables import defined
 from relook.project.figures.scoring import Score, score
+from relook.project.sending.cautions import cautions_of
 from relook.project.sending.issuing import OVERVIEW_FILE, IssuedRound, issue_round, write_round
 from relook.project.sending.overviews import overview_of
 from relook.project.sending.queueing import PlannedRound, QueueRequest, plan_round
@@ -39,6 +40,8 @@ class QueueRun:
     overview : Path
     n_earlier_rounds : int
     dry_run : bool
+    cautions : tuple of str
+        What to know before the worksheets are sent.
     """
 
     loaded: Loaded
@@ -48,6 +51,7 @@ class QueueRun:
     overview: Path
     n_earlier_rounds: int
     dry_run: bool
+    cautions: tuple[str, ...] = ()
 
 
 def run_queue(
@@ -134,6 +138,7 @@ def _plan(
         overview=project.round_folder(planned.number) / OVERVIEW_FILE,
         n_earlier_rounds=len(history.rounds),
         dry_run=dry_run,
+        cautions=cautions_of(loaded, planned.ordering),
     )
 
 
@@ -180,4 +185,5 @@ def queue_object(run: QueueRun) -> Row:
             for held in planned.plan.unplanned
         ],
         "overview": str(run.overview),
+        "cautions": list(run.cautions),
     }
