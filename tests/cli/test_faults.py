@@ -194,3 +194,18 @@ def test_names_that_are_no_text_are_refused_in_words(tmp_path, capsys):
     assert run(["new", str(folder / "labels.csv"), "--into", str(into), "--yes"]) == 2
     assert "relook.toml cannot name it" in capsys.readouterr().err
     assert not into.exists()
+
+
+def test_a_row_that_was_entered_twice_does_not_hide_the_layout(tmp_path, capsys):
+    """Fifteen items by three coders and one of them again, otherwise: the rows and the mend."""
+    rows = [f"T{at:02d},{'pq'[at % 2]},{'pq'[at % 3 > 0]},q" for at in range(15)]
+    table = tmp_path / "t.csv"
+    table.write_text(
+        "\n".join(["ticket,Anna,Ben,Cleo", *rows, "T08,q,q,p"]) + "\n", encoding="utf-8"
+    )
+    assert run(["score", str(table)]) == 2
+    said = capsys.readouterr().err
+    assert "layout: by-coder (a row per item, a column per coder), because hardly an item" in said
+    assert 'coder "Anna" gave item "T08" two labels' in said
+    assert "delete one of the two rows" in said
+    assert "row 17" in said

@@ -24,6 +24,8 @@ from relook.tables.sketches import (
     named_like,
 )
 
+#: A column this share of whose cells differ names items, although a few of them come twice.
+MOSTLY_DISTINCT = 0.9
 #: How many rows of a large table tell whether items meet a coder once: all rows of some items.
 _ROWS_LOOKED_AT = 1_000_000
 
@@ -82,21 +84,23 @@ def _layout(view: View, told: Mapping[str, Any]) -> tuple[Layout, str]:
     if view.n_files > 1 and _one_file_per_coder(view, item):
         return "long", "several files hold the same items, once each"
     unique = [item] if item is not None and item.unique else _unique_columns(view)
-    for one in unique:
+    nearly = [one for one in view.columns if _hardly_repeats(one)]
+    for one in [*unique, *(one for one in nearly if item is None or one is item)]:
         others = view.without(one)
+        once = "no item repeats" if one.unique else "hardly an item repeats"
         if guess_counts(others):
             return (
                 "counts",
                 (
-                    f'no item repeats in "{one.header}", and the other columns hold counts that '
-                    "add up alike in each row"
+                    f'{once} in "{one.header}", and the other columns hold counts that add up '
+                    "alike in each row"
                 ),
             )
         columns, _ = by_coder_columns(others)
         if len(columns) >= 2:
             return (
                 "by-coder",
-                f'no item repeats in "{one.header}", and {len(columns)} columns share their labels',
+                f'{once} in "{one.header}", and {len(columns)} columns share their labels',
             )
     if unique and item is None:
         # A number per row may still hide items that repeat.
@@ -127,6 +131,12 @@ def _unique_columns(view: View) -> list[Sketch]:
     return named + [one for one in unique if all(one is not other for other in named)]
 
 
+def _hardly_repeats(one: Sketch) -> bool:
+    """Whether a column names items, a row or two of which were entered twice."""
+    n = one.n_filled if one.n_filled == len(one.codes) and not one.prose else 0
+    return MOSTLY_DISTINCT * n <= one.n_distinct < n
+
+
 def _one_file_per_coder(view: View, item: Sketch | None) -> bool:
     return (item or _item_across_files(view)) is not None
 
@@ -146,7 +156,8 @@ def _item_across_files(view: View) -> Sketch | None:
 def _item(view: View, told: Mapping[str, Any], *, unique: bool) -> Sketch:
     if told["item"] is not None:
         return view.find(told["item"], "the items")
-    found = _unique_columns(view) if unique else []
+    nearly = [one for one in view.columns if _hardly_repeats(one)]
+    found = (_unique_columns(view) or nearly) if unique else []
     if not found:
         found = named_like(view.columns, ITEM_WORDS)
     if not found:
@@ -163,6 +174,8 @@ def _item_line(item: Sketch, told: Mapping[str, Any]) -> Line:
         because = ""
     elif item.unique:
         because = "no two rows are alike in it"
+    elif _hardly_repeats(item):
+        because = "hardly two rows are alike in it"
     elif item.words & ITEM_WORDS:
         because = "of its header, and its texts recur"
     else:
