@@ -121,3 +121,12 @@ def test_labels_within_the_tolerance_have_no_place(loaves, capsys):
     assert code == 0
     assert "not disputed: its labels lie within the tolerance" in out
     assert "place " not in out
+
+
+def test_a_tie_has_no_consensus_to_doubt(tmp_path, capsys):
+    """Two labels each of two, four coders: no figure of doubt, and why not."""
+    ferry = copy_sample("ferry_remarks", tmp_path)
+    code, out, _ = said(capsys, "why", ferry, "r052")
+    assert code == 0
+    assert "no consensus label: a tie of" in out
+    assert "no doubt is given, since the labels tie" in " ".join(out.split())

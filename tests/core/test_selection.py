@@ -97,7 +97,7 @@ def test_it_says_which_variable_filled_the_queue() -> None:
     assert got.rows_per_variable.tolist() == [1, 2]
     assert got.share_per_variable == pytest.approx([1.0, 2 / 3])
     assert got.sentence(ranked) == (
-        "3 of 4 disputed items, 75% of the chance-scaled disagreement; the number asked for bound; "
+        "3 of 4 disputed items, 75% of the chance-scaled disagreement; as many as were asked for; "
         '"b" filled the queue: heaviest in 2 of 3'
     )
 

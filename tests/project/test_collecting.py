@@ -237,12 +237,14 @@ def test_unknown_and_missing_row_codes(tmp_path: Path) -> None:
     def damage(book: Workbook) -> None:
         queue_of(book)["A2"] = "AAAA-BBBB-CCCC"
         queue_of(book)["A3"] = None
+        queue_of(book)["A4"] = "sorry, I was not sure here"
 
     _, result = collect_changed(tmp_path, damage, FILLED)
-    assert result.accepted == 3
+    assert result.accepted == 2
     assert [row.reason for row in result.rejected] == [
         '"AAAA-BBBB-CCCC" is no row code of this project',
         "the row has a decision but no row code",
+        "what stands for the row code is no row code of this project",
     ]
 
 
@@ -253,6 +255,14 @@ def test_note_without_a_decision(tmp_path: Path) -> None:
     result = collect(project, None, now=NOW)
     assert (result.accepted, result.blank) == (0, 6)
     assert ["not sure, ask Ben" in note.message for note in result.notes] == [True]
+
+
+def test_a_reason_without_a_decision_is_told_too(tmp_path: Path) -> None:
+    """It may be all that somebody did of a row."""
+    project, sent = make_project(tmp_path)
+    give_back(project, "a.xlsx", fill(sent["Ada"], {0: "coder slip"}, header="reason"))
+    (note,) = collect(project, None, now=NOW).notes
+    assert note.message == 'the row has a reason but no decision: "coder slip"'
 
 
 def test_numbers_and_sets(tmp_path: Path) -> None:

@@ -68,11 +68,11 @@ class Selection:
             share = f"{self.share:.0%}" if self.share >= 0.005 else "less than 1%"
             said += f", {share} of the {of}"
         said += {
-            "top": "; the number asked for bound",
-            "share": "; the share asked for bound",
-            "hours": "; the hours bound",
-            "default share": "; nothing was asked, so half of the disagreement",
-            "default top": f"; nothing was asked, so at most {DEFAULT_TOP}",
+            "top": "; as many as were asked for",
+            "share": "; the share that was asked for",
+            "hours": "; as many as the hours allow",
+            "default share": "; no limit was set, so half of the disagreement",
+            "default top": f"; no limit was set, so at most {DEFAULT_TOP}",
             "all disputed items": "; that is all of them",
         }[self.bound_by]
         if len(ranking.variables) > 1 and self.n_items:

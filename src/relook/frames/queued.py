@@ -210,7 +210,7 @@ def queue(
     >>> labels = pd.DataFrame({"a": list("xxyx"), "b": list("xyyx"), "c": list("xyzx")})
     >>> relook.queue(relook.measure(labels), top=1, adjudicators=["Ines"], audit=0)
     queue
-      queued  1 of 2 disputed items, 50% of the disagreement; the number asked for bound
+      queued  1 of 2 disputed items, 50% of the disagreement; as many as were asked for
       audit   0 items drawn at random from the rest
       Ines    1 row
     """

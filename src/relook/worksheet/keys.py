@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import hashlib
 import hmac
+import re
 import unicodedata
 from collections.abc import Iterable, Mapping, Sequence
 
@@ -18,6 +19,10 @@ from relook.cells.writing import clean_text, fully_unescaped, storable
 ALPHABET = "0123456789ABCDEFGHJKMNPQRSTVWXYZ"
 KEY_LENGTH = 12
 GROUP_LENGTH = 4
+
+
+#: Three groups of four: the form of a row code.
+ROW_CODE = re.compile(rf"[{ALPHABET}]{{4}}-[{ALPHABET}]{{4}}-[{ALPHABET}]{{4}}")
 
 
 def keyed_bytes(secret: bytes, purpose: str, *parts: str) -> bytes:

@@ -6,7 +6,6 @@ have been renamed or copied, columns moved or inserted, rows sorted, the header 
 
 from __future__ import annotations
 
-import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -14,7 +13,7 @@ from relook.cells.limits import column_letters
 from relook.cells.model import EMPTY, Book, Cell, Sheet
 from relook.errors import Place, Problem, RelookError, listed, nearest
 from relook.worksheet.beside import beside_table, comments, other_sheets
-from relook.worksheet.keys import ALPHABET, plain_key
+from relook.worksheet.keys import ROW_CODE, plain_key
 from relook.worksheet.matching import folded
 from relook.worksheet.model import (
     FORMAT,
@@ -31,7 +30,6 @@ from relook.worksheet.model import (
     PROPERTY_WORKSHEET,
 )
 
-_KEY = re.compile(rf"[{ALPHABET}]{{4}}-[{ALPHABET}]{{4}}-[{ALPHABET}]{{4}}")
 _LEAST_HEADERS = 2  # of ours, in one row, to tell the header row
 _TICK = folded(HEADER_TICK.format(label="\x00")).partition("\x00")[0]
 #: Where decisions stand in a queue sheet, and labels in a coding sheet.
@@ -218,7 +216,7 @@ def _column_of_keys(sheet: Sheet) -> int | None:
     counts: dict[int, int] = {}
     for row in sheet.rows:
         for index, cell in enumerate(row):
-            if cell.kind == "text" and _KEY.fullmatch(plain_key(cell.text[:40])):
+            if cell.kind == "text" and ROW_CODE.fullmatch(plain_key(cell.text[:40])):
                 counts[index] = counts.get(index, 0) + 1
     return max(counts, key=lambda index: (counts[index], -index)) if counts else None
 
@@ -277,7 +275,9 @@ def _best_key_column(queue: _Queue, indices: Sequence[int]) -> int:
     return max(
         indices,
         key=lambda index: sum(
-            1 for row in queue.sheet.rows if _KEY.fullmatch(plain_key(_at(row, index).text[:40]))
+            1
+            for row in queue.sheet.rows
+            if ROW_CODE.fullmatch(plain_key(_at(row, index).text[:40]))
         ),
     )
 
@@ -323,7 +323,7 @@ def _rows(queue: _Queue, columns: _Columns) -> list[ReturnedRow]:
         ticked = tuple(
             label for index, label in columns.ticks.items() if folded(_at(cells, index).text)
         )
-        has_key = _KEY.fullmatch(key) is not None
+        has_key = ROW_CODE.fullmatch(key) is not None
         if not has_key and (number < queue.header_row or not (decision.text or ticked or key)):
             continue
         if _repeats_header(cells, columns):

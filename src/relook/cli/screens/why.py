@@ -159,13 +159,16 @@ def _standing(held: Explanation) -> list[str]:
         lines.append(f"consensus label: {held.consensus}")
     elif held.tied:
         lines.append(f"no consensus label: a tie of {', '.join(held.tied)}")
-    if held.doubt is not None:
+    if held.tied:
+        lines.append("no doubt is given, since the labels tie and there is no consensus to doubt")
+    elif held.doubt is not None:
         # The model takes coders' errors for independent, so that its extremes promise too much.
-        doubt = "below 0.01" if held.doubt < 0.01 else f"{held.doubt:.2f}"
-        of = "the likeliest of them" if held.tied else "the consensus label"
+        doubt = f"{held.doubt:.2f}"
+        doubt = {"0.00": "below 0.01", "1.00": "above 0.99"}.get(doubt, doubt)
         lines.append(
-            f"doubt {doubt}: a score from 0 to 1 that {of} is wrong, by a model of how each coder "
-            "labels (Dawid & Skene 1979) that takes their errors for independent; not calibrated"
+            f"doubt {doubt}: a score from 0 to 1 that the consensus label is wrong, by a model of "
+            "how each coder labels (Dawid & Skene 1979) that takes their errors for independent; "
+            "not calibrated"
         )
     else:
         lines.append(f"doubt is undefined: {held.doubt_undefined_because}")

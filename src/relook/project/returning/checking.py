@@ -11,7 +11,7 @@ from relook.core.decisions import Ruling
 from relook.errors import Place, Problem, RelookError
 from relook.project.archive.rounds import Round, RoundRow
 from relook.project.returning.collected import RowReport
-from relook.worksheet.keys import evidence_digest
+from relook.worksheet.keys import ROW_CODE, evidence_digest
 from relook.worksheet.matching import Reading, folded, match_decision, match_ticks, shown
 from relook.worksheet.model import SheetVariable
 from relook.worksheet.read import ReturnedRow, ReturnedWorksheet, is_own_header
@@ -202,7 +202,9 @@ def _reject_unknown(returned: ReturnedWorksheet, row: ReturnedRow, result: Check
         return  # whatever stands in the column of row codes there, nothing was decided in the row
     report = _report(returned, row, None, found=found)
     if row.key:
-        reason = f'"{row.key[:40]}" is no row code of this project'
+        # A note that was typed there would be hard to know again in the form of a code.
+        named = f'"{row.key}"' if ROW_CODE.fullmatch(row.key) else "what stands for the row code"
+        reason = f"{named} is no row code of this project"
     else:
         reason = "the row has a decision but no row code"
     mend = "copy the row code from the worksheet that was sent"
@@ -220,12 +222,14 @@ def _take_blank(row: ReturnedRow, report: RowReport, result: Checked) -> None:
         )
         return
     result.blank.add(row.key)
-    if row.note:
+    for what, said in (("note", row.note), ("reason", row.reason)):
+        if not said:
+            continue
         result.notes.append(
             Problem(
-                f'the row has a note but no decision: "{row.note[:80]}"',
+                f'the row has a {what} but no decision: "{said[:80]}"',
                 report.where,
-                "decide the row, if the note was meant as an answer",
+                f"decide the row, if the {what} was meant as an answer",
                 "warning",
             )
         )

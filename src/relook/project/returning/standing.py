@@ -171,9 +171,14 @@ def _next_step(
     if history.last_is_unanswered:
         return f"wait for the worksheets, then relook collect {shown}"
     unsent = {(held.item, held.variable) for held in waiting} - history.waiting_for_second()
+    rows = sum(sheet.n_rows - sheet.n_decided for sheet in out)
+    if unsent and out:
+        return (
+            f"{rows:,} rows are still open; collect them, or have somebody else rule on "
+            f"{len(unsent):,} already with relook queue {shown} --splits"
+        )
     if unsent:
         return f"relook queue {shown} --splits"
     if out:
-        rows = sum(sheet.n_rows - sheet.n_decided for sheet in out)
         return f"{rows:,} rows are still open; collect them, or go on with relook rescore {shown}"
     return f"relook rescore {shown}"
