@@ -289,7 +289,8 @@ def write_prospect(book: Workbook, looks: Looks, overview: Overview) -> None:
         TableColumn("other end", 11, FIGURE),
     ]
     top = 1
-    for variable in _in_order(row.variable for row in rows):
+    variables = _in_order(row.variable for row in rows)
+    for variable in variables:
         lines: list[tuple[str, int, float | None, float | None]] = [
             (r.variable, r.n_settled, r.low, r.high) for r in rows if r.variable == variable
         ]
@@ -303,7 +304,8 @@ def write_prospect(book: Workbook, looks: Looks, overview: Overview) -> None:
             low=3,
             least=min((end for line in lines for end in line[2:] if end is not None), default=0.0),
         )
-        sheet.row_breaks.append(Break(id=max(last + 1, top + 23)))
+        if variable != variables[-1]:  # the note stays with the last
+            sheet.row_breaks.append(Break(id=max(last + 1, top + 23)))
         top = max(last + 2, top + 24)  # the chart is some twenty rows high
     note = (
         "Were every item settled as its consensus label; at the cautious end ties go to the tied "

@@ -122,5 +122,6 @@ def write_note(
     width = sum(
         sheet.column_dimensions[get_column_letter(at)].width for at in range(span[0], span[1] + 1)
     )
-    height = layout.text_height(text, width - 3, size) + 8
+    # Words break earlier in merged cells than their letters alone would tell.
+    height = layout.text_height(text, width - 6, size) + 8
     set_height(sheet, row, height)
