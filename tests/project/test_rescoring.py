@@ -365,7 +365,7 @@ def test_overlap_is_counts_under_30_items_and_an_alpha_above(tmp_path):
         assert said.startswith(f"2 adjudicators share {n} items and agree on {n - differ}.")
         if n < 30:
             assert held.alpha is None
-            assert said.endswith("Too few for an alpha of their own (our threshold: 30).")
+            assert said.endswith("Too few for an alpha of their own (fewer than 30).")
             continue
         table = {}
         for ruling in rulings:

@@ -220,7 +220,7 @@ def overlap_sentence(held: Overlap) -> str:
             "items, chosen ones and no random sample."
         )
     if held.n_labelled_items < LEAST_SHARED_ITEMS:
-        return f"{said} Too few for an alpha of their own (our threshold: {LEAST_SHARED_ITEMS})."
+        return f"{said} Too few for an alpha of their own (fewer than {LEAST_SHARED_ITEMS})."
     return f"{said} Their own alpha is undefined: {held.undefined_because}."
 
 

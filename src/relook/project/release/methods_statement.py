@@ -304,14 +304,16 @@ def _audit(held: AuditFindings, ties: str) -> str:
     ruled = sum(part.n_ruled for part in result.strata)
     otherwise = sum(part.n_otherwise for part in result.strata)
     verb = "was" if otherwise == 1 else "were"
+    items = _counted(held.n_drawn, "item was", "items were")
     said = (
-        f"Of {ruled:,} audit items drawn at random within strata from those that would be released "
-        f"without a decision, {otherwise:,} {verb} ruled otherwise"
+        f"For the audit {items} drawn at random within strata from those that would be released "
+        f"without a decision; of {ruled:,} of them with a ruling and a label to hold it against, "
+        f"{otherwise:,} {verb} ruled otherwise"
     )
     if result.share_ruled_otherwise is None:
         return f"{said}; no share is estimated, as {result.undefined_because}."
     total = sum(part.n_items for part in result.strata)
-    more = []
+    more = ["Adjudicators' own slips count as rulings otherwise."] if otherwise else []
     if held.n_unresolved:
         more.append(
             f"{_counted(held.n_unresolved, 'ruling', 'rulings')} among these, split or not "
@@ -330,8 +332,6 @@ def _audit(held: AuditFindings, ties: str) -> str:
         )
     if held.n_drawn > ruled + (held.n_ties if held.n_left_out else 0):
         more.append("Audit items without a ruling are taken as missing at random.")
-    if otherwise:
-        more.append("Adjudicators' own slips are among those.")
     estimated = (
         f"{said}; weighted by the sizes of the strata (Begg & Greenes 1983), an estimated "
         f"{result.share_ruled_otherwise:.1%} of the {total:,} items that would be released with a "
