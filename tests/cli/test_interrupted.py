@@ -33,7 +33,13 @@ def begin(folder: Path) -> subprocess.Popen[str]:
         stdout=subprocess.PIPE,
         stderr=subprocess.PIPE,
         text=True,
+        preexec_fn=_takes_interrupts,
     )
+
+
+def _takes_interrupts() -> None:
+    """A shell has what it starts in the background ignore SIGINT, and that is handed down."""
+    signal.signal(signal.SIGINT, signal.SIG_DFL)
 
 
 @pytest.mark.skipif(os.name == "nt", reason="Windows has no SIGINT for one process")
