@@ -152,12 +152,11 @@ def _check(found: int, n: int) -> None:
 def _chance_up_to(found: int, n: int, marked: int, size: int) -> float:
     """The chance of `found` marked ones or fewer among n drawn from `size`, `marked` of them so.
 
+    `found` is no fewer than there must be among them.
     Each term of the hypergeometric distribution is made from the one before, from the fewest that
     can be found on: no factorial of a large set loses digits.
     """
     fewest = max(0, n - (size - marked))
-    if found < fewest:
-        return 0.0
     j = np.arange(min(n, size - marked))
     first = np.log((max(n, size - marked) - j) / (size - j)).sum()
     x = np.arange(fewest, min(found, n, marked))
