@@ -24,6 +24,8 @@ _SPACES = (*range(9, 14), *range(28, 33), 0xC2, 0xE1, 0xE2, 0xE3)
 
 #: From so many texts on, columns with many distinct ones among the first are coded by numbers.
 _MANY, _HEAD = 100_000, 4_096
+#: Numbers, and a byte more on the way to them, fit into 32 bits.
+_MOST = 2**31 - 512
 
 
 def read_regular(
@@ -130,7 +132,7 @@ def _coded_by_numbers(column: Any) -> tuple[IntArray, npt.NDArray[np.object_]] |
     head = column.slice(0, _HEAD)
     if len(head.unique()) < _HEAD // 4:
         return None  # few texts are hashed quickly
-    found = numbers_of_texts([_text_bytes(chunk) for chunk in column.chunks], 2 * n)
+    found = numbers_of_texts([_text_bytes(chunk) for chunk in column.chunks], min(2 * n, _MOST))
     if found is None:
         return None
     codes, first = in_order_of_appearance(*found)
