@@ -126,9 +126,9 @@ def weighted_interval(
     exact ones, since with Wilson's the few findings of an audit are covered less often than stated;
     and of several strata each limit is moved out by one item, unless all of the stratum was drawn.
     That is our own widening: where much of a small stratum was drawn, exact limits may fall on the
-    near side of p_h. Of 800 made settings of one to three strata, 2,000 audits each, a 95 % interval
-    covered less than 94 % in 39 without it (28.2 % at the worst, 98.0 % on average) and in none with
-    it (94.0 % and 99.2 %).
+    near side of p_h. Of 800 made settings of one to three strata, 2,000 audits each, 95 % intervals
+    covered less than 94 % in 39 without it (28.2 % at the worst, 98.0 % on average) and in none
+    with it (94.0 % and 99.2 %).
     """
     share = below = above = 0.0
     total = sum(sizes)
